@@ -45,7 +45,9 @@ def parse_quantity(text: str, unit: str) -> Quantity:
     value = _in_unit(value_text, unit, text) if value_text.strip() else 0.0
     u = _uncertainty(u_texts[0], value, unit, text)
     if u < 0:
-        raise ValueError(f"{text!r} has a negative uncertainty; the figure behind ± is a standard uncertainty, 0 or more")
+        raise ValueError(
+            f"{text!r} has a negative uncertainty; the figure behind ± is a standard uncertainty, 0 or more"
+        )
     return Quantity(value, u)
 
 
