@@ -68,16 +68,15 @@ def load_case(path: Path) -> Case:
         form = _CaseForm.model_validate(tables)
     except ValidationError as error:
         raise _case_error(path, [*_form_faults(error), *faults]) from error
-    if not faults:
-        faults = [*_value_faults(form)]
+    faults = faults or [*_value_faults(form)]
+    if faults:
+        raise _case_error(path, faults)
     route = _route(form)
-    places: tuple[Place, ...] = ()
-    if form.places and not faults:
-        places, faults = _read_places(path.parent / form.places.file, route)
+    places_file = path.parent / form.places.file if form.places else None
+    places, faults = _read_places(places_file, route) if places_file else ((), [])
     if faults:
         raise _case_error(path, faults)
     terminals = tuple(_terminal(table, path.parent) for table in form.terminal)
-    places_file = path.parent / form.places.file if form.places else None
     return Case(path, form.title, form.kind, route, terminals, places, places_file)
 
 
@@ -313,12 +312,15 @@ def _read_places(path: Path, route: Route) -> tuple[tuple[Place, ...], list[str]
     places: list[Place] = []
     faults: list[str] = []
     names = {_plain(section.name): index for index, section in enumerate(route.sections)}
-    with path.open(newline="", encoding="utf-8-sig") as file:
-        for line, row in enumerate(csv.DictReader(file), 2):
-            try:
-                places.append(_place_of(row, names, route))
-            except (KeyError, ValueError) as error:
-                faults.append(f"places, file: {path.name} line {line}: {error}")
+    try:
+        rows = list(csv.DictReader(path.read_text(encoding="utf-8-sig").splitlines()))
+    except UnicodeDecodeError as error:
+        return (), [f"places, file: {path.name} is not UTF-8 text at byte {error.start}; save it as UTF-8"]
+    for line, row in enumerate(rows, 2):
+        try:
+            places.append(_place_of(row, names, route))
+        except ValueError as error:
+            faults.append(f"places, file: {path.name} line {line}: {error}")
     return tuple(places), faults
 
 

@@ -94,7 +94,7 @@ def _signals(record: Record, channels: Mapping[str, Channel]) -> _Signals:
     first, stop = _longest_complete_run(np.array(list(rows.values())))
     if stop - first < FEWEST_SAMPLES:
         raise RecordError(
-            f"{record.path}: {stop - first} unbroken samples in the channels named; at least {FEWEST_SAMPLES} are needed"
+            f"{record.path}: {stop - first} unbroken samples in the channels named; {FEWEST_SAMPLES} or more are needed"
         )
     return _Signals(
         by_role={role: row[first:stop] for role, row in rows.items()},

@@ -1,6 +1,7 @@
 """Values with a standard uncertainty, in SI, read from text such as ``118.4 km ± 60 m``."""
 
 import functools
+import math
 import re
 from dataclasses import dataclass
 from typing import Any
@@ -82,7 +83,10 @@ def _in_unit(text: str, unit: str, whole: str, *, delta: bool = False) -> float:
         raise ValueError(f"{whole!r} is not a number with a unit; write it like '118.4 km ± 60 m'")
     if not term["unit"] and unit:
         raise ValueError(f"{whole!r} has no unit; a unit of the kind '{unit}' is needed")
-    return _convert(float(term["number"]), term["unit"], unit, whole, delta=delta)
+    number = float(term["number"])
+    if not math.isfinite(number):
+        raise ValueError(f"{whole!r} is not a finite number")
+    return _convert(number, term["unit"], unit, whole, delta=delta)
 
 
 def _convert(number: float, unit: str, target: str, whole: str, *, delta: bool) -> float:

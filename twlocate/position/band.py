@@ -61,12 +61,10 @@ def highest_density(densities: Sequence[SectionDensity], coverage: float) -> tup
 def _mass_above(section: SectionDensity, level: float) -> float:
     """Integrate the density where it exceeds `level`, exactly for a piecewise linear density."""
     d0, d1 = section.density[:-1], section.density[1:]
-    width = np.diff(section.x)
     lower, upper = np.minimum(d0, d1), np.maximum(d0, d1)
-    sloping = upper - lower > 1e-12 * upper
-    above = np.divide(upper - level, upper - lower, out=np.ones_like(width), where=sloping)
-    share = np.clip(above, 0.0, 1.0) * (upper >= level)
-    return float(np.sum(width * share * (np.maximum(lower, level) + upper) / 2))
+    crossed = (lower < level) & (level < upper)
+    share = np.divide(upper - level, upper - lower, out=(lower >= level).astype(np.float64), where=crossed)
+    return float(np.sum(np.diff(section.x) * share * (np.maximum(lower, level) + upper) / 2))
 
 
 def _pieces(index: int, section: SectionDensity, level: float) -> list[Piece]:
