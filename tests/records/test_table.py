@@ -27,7 +27,7 @@ def test_rate_start_and_clock_from_comment_lines(tmp_path):
     assert [(c.name, c.unit) for c in record.channels] == [("pressure", "kPa"), ("flow", "m³/s")]
     assert record.channels[0].samples.tolist() == [1.5, 2.5]
     assert record.channel("flow").missing == 1
-    assert record.repairs[-1].what == "1 readings missing"
+    assert record.repairs[-1].what == "1 samples missing"
 
 
 @pytest.mark.parametrize(
@@ -74,7 +74,7 @@ def test_gaps_stay_gaps_and_uneven_times_are_kept(tmp_path):
 @pytest.mark.parametrize(
     ("text", "message"),
     [
-        ("p [kPa]\n1\n2\n", r"no column is called time .* '# rate: 500 Hz'"),
+        ("p [kPa]\n1\n2\n", r"nothing is called time .* 'rate: 500 Hz'"),
         ("hello\nworld\n", "no line of numbers"),
         ("# rate: fast\np\n1\n", "rate 'fast' is not a number"),
         ("# rate: 5 kg\np\n1\n", "cannot be read in 'Hz'"),

@@ -10,6 +10,8 @@ UNIX_EPOCH_DAY = date(1970, 1, 1).toordinal()
 
 DECIMAL = re.compile(r"([+-]?)(\d*)(?:\.(\d*))?(?:[eE]([+-]?\d{1,3}))?")
 
+NUMBER = re.compile(r"[+-]?(?:\d+\.?\d*|\.\d+)(?:[eE][+-]?\d{1,3})?")
+
 ISO_8601 = re.compile(
     r"(\d{4})-(\d\d)-(\d\d)(?:[T ](\d\d):(\d\d)(?::(\d\d)(?:[.,](\d+))?)?)?\s*(Z|UTC|[+-]\d\d(?::?\d\d)?)?",
     re.IGNORECASE,

@@ -5,9 +5,13 @@ from collections.abc import Callable
 from pathlib import Path
 
 from twlocate.errors import RecordError
+from twlocate.records.audio import read_audio
 from twlocate.records.comtrade.reading import read_comtrade
+from twlocate.records.hdf5 import read_hdf5
+from twlocate.records.matlab import read_matlab
 from twlocate.records.record import Record
 from twlocate.records.table import read_table
+from twlocate.records.tdms import read_tdms
 
 Span = tuple[float, float]
 Reader = Callable[[Path, Span | None], Record]
@@ -18,6 +22,13 @@ READERS: dict[str, Reader] = {
     ".cff": read_comtrade,
     ".hdr": read_comtrade,
     ".inf": read_comtrade,
+    ".wav": read_audio,
+    ".bwf": read_audio,
+    ".flac": read_audio,
+    ".mat": read_matlab,
+    ".h5": read_hdf5,
+    ".hdf5": read_hdf5,
+    ".tdms": read_tdms,
     ".csv": read_table,
     ".txt": read_table,
     ".tsv": read_table,
@@ -58,5 +69,7 @@ def read(path: str | Path, span: Span | None = None) -> Record:
         return reader(path, span)
     except RecordError as error:
         raise RecordError(f"{path}: {error}") from None
+    except MemoryError:
+        raise RecordError(f"{path}: too large for this machine's memory; read a span of it") from None
     except OSError as error:
         raise RecordError(f"{path}: cannot be read ({error.strerror or error})") from None

@@ -8,12 +8,11 @@ import numpy as np
 
 from twlocate.arrays import FloatArray
 from twlocate.errors import RecordError
-from twlocate.quantity import parse_quantity
+from twlocate.records.assembling import UNIT_NS, Times, assemble, epoch_unit_ns
 from twlocate.records.delimited import forgiving_numbers
-from twlocate.records.moments import ISO_8601, SECOND_NS, Moment, exact_decimal, iso_moment, resolution_ns
-from twlocate.records.record import Channel, Clock, Record, Stretch
+from twlocate.records.moments import ISO_8601, NUMBER, SECOND_NS, Moment, exact_decimal, iso_moment, resolution_ns
+from twlocate.records.record import Channel, Record
 from twlocate.records.repairs import LIKELY, SURE, RepairLog
-from twlocate.records.spacing import stretches_by_stamps
 from twlocate.records.text import decode
 from twlocate.records.windows import cut
 
@@ -23,12 +22,8 @@ SETTING = re.compile(r"#+\s*([A-Za-z][\w ]*?)\s*[:=]\s*(.*\S)\s*")
 COLUMN = re.compile(r"(.*?)\s*[\[(]([^\[\]()]*)[\])]\s*")
 SPACED_TITLE = re.compile(r"\S+(?:\s*[\[(][^\[\]()]*[\])])?")
 TIME_NAME = re.compile(r"(t|time|timestamp|date|datetime|date time|utc|elapsed)(\s.*)?", re.IGNORECASE)
-NUMBER = re.compile(r"[+-]?(?:\d+\.?\d*|\.\d+)(?:[eE][+-]?\d+)?")
 BLANK = ("", "nan", "NaN", "NAN", "null", "-", "—", "N/A")
 DELIMITERS = ("\t", ";", ",", "|")
-UNIT_NS = {"s": 10**9, "sec": 10**9, "ms": 10**6, "us": 10**3, "µs": 10**3, "μs": 10**3, "ns": 1, "min": 60 * 10**9}
-EPOCH_UNITS = ((10**17, 1), (10**14, 10**3), (10**11, 10**6), (10**8, 10**9))
-"""Smallest number that counts from 1970-01-01 (1973 on), and the nanoseconds it counts in, by size."""
 
 
 @dataclass(frozen=True)
@@ -42,16 +37,6 @@ class Layout:
     """The data lines, decimal points in them."""
     delimiter: str | None
     """None: white space."""
-
-
-@dataclass(frozen=True)
-class Times:
-    """The time column: nanoseconds from `zero_ns`, which is UTC, or None where times are relative."""
-
-    seconds: FloatArray
-    zero_ns: int | None
-    tick_ns: float
-    offset_stated: bool = True
 
 
 def read_table(path: Path, span: Span | None) -> Record:
@@ -70,16 +55,8 @@ def read_table(path: Path, span: Span | None) -> Record:
     numbers = _numbers(layout, log)
     time_columns = _time_columns(layout)
     times = _times(layout, time_columns, log) if time_columns else None
-    rate_hz = _rate_hz(layout)
-    stretches, doubts = _stretches(times, rate_hz, len(numbers), log)
-    start_ns, tick_ns, notes = _start(layout, times)
-    record = Record(
-        path=path, format="text table", station=layout.settings.get("station", ""),
-        channels=_channels(layout, numbers, time_columns, log), stretches=stretches,
-        start_ns=start_ns, resolution_ns=tick_ns, clock=_clock(layout, start_ns, doubts, notes),
-        repairs=tuple(log.entries),
-    )  # fmt: skip
-    return cut(record, span) if span is not None else record
+    channels = _channels(layout, numbers, time_columns)
+    return cut(assemble(path, "text table", channels, times, layout.settings, log), span)
 
 
 def lay_out(text: str) -> Layout:
@@ -210,7 +187,7 @@ def _moment(text: str, row: int) -> Moment:
 
 def _counted_times(texts: list[str], unit_ns: int | None, log: RepairLog) -> Times:
     """Return times given as numbers: from the record's start, or from 1970-01-01 when that large."""
-    epoch_unit = _epoch_unit_ns(texts[0], unit_ns)
+    epoch_unit = epoch_unit_ns(float(texts[0]) if NUMBER.fullmatch(texts[0]) else 0.0, unit_ns)
     if unit_ns is None and epoch_unit is None:
         log.add("no unit of time", "time column", "seconds", LIKELY)
     scale = epoch_unit or unit_ns or SECOND_NS
@@ -219,14 +196,6 @@ def _counted_times(texts: list[str], unit_ns: int | None, log: RepairLog) -> Tim
     seconds = np.array([value - zero for value in picos], dtype=np.float64) * 1e-12
     tick_ns = scale * 10.0 ** -max(_decimals(text) for text in texts[:1000])
     return Times(seconds, zero // 1000 if epoch_unit else None, tick_ns)
-
-
-def _epoch_unit_ns(text: str, unit_ns: int | None) -> int | None:
-    """Return the nanoseconds a time counts in when it counts from 1970-01-01; None when it is relative."""
-    size = abs(float(text)) if NUMBER.fullmatch(text) else 0.0
-    if unit_ns is not None:
-        return unit_ns if size * unit_ns >= 10**8 * SECOND_NS else None
-    return next((unit for least, unit in EPOCH_UNITS if size >= least), None)
 
 
 def _decimal(text: str, scale: int, row: int) -> int:
@@ -242,73 +211,7 @@ def _decimals(text: str) -> int:
     return len(mantissa.partition(".")[2]) - int(exponent or 0)
 
 
-def _rate_hz(layout: Layout) -> float | None:
-    text = layout.settings.get("rate")
-    if text is None:
-        return None
-    try:
-        rate = parse_quantity(text if not NUMBER.fullmatch(text) else f"{text} Hz", "Hz").value
-    except ValueError as error:
-        raise RecordError(f"rate {error}") from None
-    if not 0.0 < rate < 1e12:
-        raise RecordError(f"rate {text!r} is not a positive sampling rate")
-    return rate
-
-
-def _stretches(
-    times: Times | None, rate_hz: float | None, count: int, log: RepairLog
-) -> tuple[tuple[Stretch, ...], list[str]]:
-    if rate_hz is not None and (times is None or count == 1):
-        return (Stretch(0, count, 0.0 if times is None else float(times.seconds[0]), rate_hz),), []
-    if times is None:
-        raise RecordError("no column is called time and no line such as '# rate: 500 Hz' gives the sampling rate")
-    stretches, doubts = stretches_by_stamps(times.seconds, times.tick_ns * 1e-9, "the time column", log)
-    measured = stretches[0].rate_hz
-    if rate_hz is not None and abs(measured / rate_hz - 1.0) > 1e-3:
-        what = f"rate {rate_hz:g} Hz stated, {measured:.6g} Hz by the time column"
-        log.add(what, "comment line 'rate'", "the time column rules", LIKELY)
-        doubts.append(what)
-    return stretches, doubts
-
-
-def _start(layout: Layout, times: Times | None) -> tuple[int | None, int | None, list[str]]:
-    """Return the record's zero in UTC nanoseconds, its resolution, and notes on the clock."""
-    text = layout.settings.get("start")
-    if times is not None and times.zero_ns is not None:
-        notes = [] if times.offset_stated else ["offset from UTC not stated: times taken as UTC"]
-        return times.zero_ns, max(1, round(times.tick_ns)), notes
-    if text is None:
-        return None, None, []
-    try:
-        moment = iso_moment(text)
-    except ValueError as error:
-        raise RecordError(f"start {error}") from None
-    notes = [] if moment.offset_s is not None else ["offset from UTC not stated: times taken as UTC"]
-    return moment.ns, moment.resolution_ns, notes
-
-
-def _clock(layout: Layout, start_ns: int | None, doubts: list[str], notes: list[str]) -> Clock:
-    text = layout.settings.get("clock")
-    if start_ns is None:
-        return Clock(None, False, ("no absolute time", *doubts))
-    if text is not None and text.strip().lower() == "free":
-        return Clock(None, False, ("declared free in the file", *notes, *doubts))
-    if text is None:
-        return Clock(None, not doubts, ("accuracy not stated in the file", *notes, *doubts))
-    try:
-        return Clock(parse_quantity(text, "s").u, not doubts, (*notes, *doubts))
-    except ValueError as error:
-        raise RecordError(f"clock {error}") from None
-
-
-def _channels(layout: Layout, numbers: FloatArray, time_columns: list[int], log: RepairLog) -> tuple[Channel, ...]:
+def _channels(layout: Layout, numbers: FloatArray, time_columns: list[int]) -> tuple[Channel, ...]:
     chosen = [index for index in range(len(layout.names)) if index not in time_columns]
-    channels = tuple(
-        Channel(layout.names[index], layout.units[index], np.ascontiguousarray(numbers[:, index])) for index in chosen
-    )
-    if not channels:
-        raise RecordError("there is a time column but no column of readings")
-    for channel in channels:
-        if channel.missing:
-            log.add(f"{channel.missing} readings missing", f"column {channel.name!r}", "left out (NaN)", SURE)
-    return channels
+    columns = ((layout.names[index], layout.units[index], numbers[:, index]) for index in chosen)
+    return tuple(Channel(name, unit, np.ascontiguousarray(column)) for name, unit, column in columns)

@@ -51,8 +51,10 @@ def windowed_stretches(
     return tuple(kept), ranges
 
 
-def cut(record: Record, span: tuple[float, float]) -> Record:
-    """Return the part of a record inside `span`, seconds from its start; the time axis stays."""
+def cut(record: Record, span: tuple[float, float] | None) -> Record:
+    """Return the part of a record inside `span`, seconds from its start; the time axis stays; None keeps all."""
+    if span is None:
+        return record
     stretches, ranges = windowed_stretches(record.stretches, span)
     index = np.concatenate([np.arange(first, stop) for first, stop in ranges])
     channels = tuple(_cut_channel(channel, index) for channel in record.channels)

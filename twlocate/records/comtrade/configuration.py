@@ -5,7 +5,7 @@ from dataclasses import dataclass
 
 from twlocate.errors import RecordError
 from twlocate.records.comtrade.dates import read_moment, read_time_code
-from twlocate.records.moments import Moment
+from twlocate.records.moments import NUMBER, Moment
 from twlocate.records.repairs import GUESS, LIKELY, SURE, RepairLog
 
 CTRL_Z = "\x1a"
@@ -14,7 +14,6 @@ FILE_TYPES = ("ASCII", "BINARY", "BINARY32", "FLOAT32")
 FULL_ANALOG_FIELDS = 13
 SHORT_ANALOG_FIELDS = 10
 MAX_CHANNELS = 999_999
-NUMBER = re.compile(r"[+-]?(?:\d+\.?\d*|\.\d+)(?:[eE][+-]?\d{1,3})?")
 
 
 @dataclass(frozen=True)
