@@ -16,9 +16,9 @@ from dataclasses import dataclass
 from pathlib import Path
 
 import numpy as np
-import scipy
+from scipy import signal, special
 
-from twlocate.records import AnalogColumn, write_comtrade
+from twlocate.records import Channel, Clock, Record, Stretch, write_comtrade
 from twlocate.waves import CLARKE
 
 HERE = Path(__file__).parent
@@ -38,7 +38,7 @@ class Event:
         folder.mkdir(parents=True, exist_ok=True)
         self.write_recordings(folder)
         (folder / "case.toml").write_text(self.case, encoding="utf-8")
-        (folder / "truth.json").write_text(json.dumps(self.truth, indent=2) + "\n", encoding="utf-8")
+        (folder / "truth.json").write_text(json.dumps(self.truth, indent=2, ensure_ascii=False) + "\n", encoding="utf-8")
         return folder / "case.toml"
 
 
@@ -93,8 +93,10 @@ def lattice(
             continue
         reached[target].append(there)
         s = nodes[target]
-        for onward, matrix in ((up, s.transmit_up if up else s.transmit_down),
-                               (not up, s.reflect_below if up else s.reflect_above)):
+        for onward, matrix in (
+            (up, s.transmit_up if up else s.transmit_down),
+            (not up, s.reflect_below if up else s.reflect_above),
+        ):
             for mode, amplitude in enumerate(matrix[:, wave.mode] * wave.amplitude):
                 if abs(amplitude) > floor:
                     waves.append((target, onward, Packet(there.delay_s, there.loss, amplitude, mode)))
@@ -117,7 +119,7 @@ def smeared_step(t: np.ndarray, loss: float) -> np.ndarray:
     """Return a unit step after a way with the loss κd = `loss`."""
     out = np.zeros_like(t)
     after = t > 0
-    out[after] = scipy.special.erfc(loss / (2 * np.sqrt(t[after])))
+    out[after] = special.erfc(loss / (2 * np.sqrt(t[after])))
     return out
 
 
@@ -176,18 +178,20 @@ def line_event(rng: np.random.Generator) -> Event:
             (0, "Hollin Fell", "hollin-fell", -0.5, clocks[0], delays[0]),
             (2, "Marsh End", "marsh-end", -0.25, clocks[1], delays[1]),
         ):
-            columns = line_columns(reached[node], reflection, onset_s + clock + delay, angle, rng)
-            write_comtrade(
-                folder / f"{stem}.cfg",
-                columns,
-                rate_hz=LINE_RATE_HZ,
-                start_ns=LINE_START_NS,
+            record = Record(
+                path=folder / f"{stem}.cfg",
+                format="",
+                channels=line_channels(reached[node], reflection, onset_s + clock + delay, angle, rng),
+                stretches=(Stretch(0, LINE_SAMPLES, 0.0, LINE_RATE_HZ),),
                 station=name,
                 device="wave recorder",
+                start_ns=LINE_START_NS,
+                resolution_ns=1,
+                trigger_s=8e-3,
                 line_frequency_hz=50.0,
-                data_format="BINARY32",
-                time_quality=3,
+                clock=Clock(u_s=0.1e-6 / 3**0.5),
             )
+            write_comtrade(record, record.path, "BINARY32")
         write_towers(folder / "towers.csv")
 
     truth = {
@@ -217,9 +221,9 @@ def line_waves(length: float, speed: np.ndarray, x: float, resistance: float, vo
     return lattice(spans, nodes, 1, sent * voltage, horizon_s=13e-3, floor=20.0)
 
 
-def line_columns(
+def line_channels(
     packets: list[Packet], reflection: float, onset_s: float, angle: float, rng: np.random.Generator
-) -> list[AnalogColumn]:
+) -> tuple[Channel, ...]:
     """Return what a recorder with a fourth-order anti-alias filter stores: three voltages, three currents."""
     warm_up = 2000
     t = (np.arange((LINE_SAMPLES + warm_up) * OVERSAMPLING) / OVERSAMPLING - warm_up) / LINE_RATE_HZ
@@ -236,17 +240,17 @@ def line_columns(
     steady = omega * (t - onset_s) + angle - turn
     voltage += 180e3 * np.sin(steady)
     current += 610 * np.sin(steady - 0.4)
-    low_pass = scipy.signal.bessel(4, 380e3, fs=LINE_RATE_HZ * OVERSAMPLING, output="sos", norm="mag")
-    columns = []
-    for names, rows, noise, step in (
-        (("U L1", "U L2", "U L3"), voltage, 40.0, 12.2),
-        (("I L1", "I L2", "I L3"), current, 0.6, 0.3),
+    low_pass = signal.bessel(4, 380e3, fs=LINE_RATE_HZ * OVERSAMPLING, output="sos", norm="mag")
+    channels = []
+    for names, unit, rows, noise, step in (
+        (("U L1", "U L2", "U L3"), "V", voltage, 40.0, 12.2),
+        (("I L1", "I L2", "I L3"), "A", current, 0.6, 0.3),
     ):
-        filtered = scipy.signal.sosfilt(low_pass, rows)[:, warm_up * OVERSAMPLING :: OVERSAMPLING]
+        filtered = signal.sosfilt(low_pass, rows)[:, warm_up * OVERSAMPLING :: OVERSAMPLING]
         for name, row in zip(names, filtered, strict=True):
             readings = np.rint((row + rng.normal(0, noise, row.size)) / step)
-            columns.append(AnalogColumn(name, "V" if name.startswith("U") else "A", readings * step, step=step))
-    return columns
+            channels.append(Channel(name, unit, readings * step, step=step, side="primary"))
+    return tuple(channels)
 
 
 def write_towers(path: Path) -> None:
@@ -423,9 +427,7 @@ def cable_event(rng: np.random.Generator) -> Event:
     return Event(CABLE_CASE, truth, write)
 
 
-def cable_waves(
-    lengths: np.ndarray, speeds: np.ndarray, section: int, x: float, resistance: float
-) -> list[Packet]:
+def cable_waves(lengths: np.ndarray, speeds: np.ndarray, section: int, x: float, resistance: float) -> list[Packet]:
     """Follow a unit pulse from the substation; return what comes back to it, the launch included."""
     z = np.array([38.0, 34.0])
     rho = -z[section] / (z[section] + 2 * resistance)
@@ -466,7 +468,7 @@ EVENTS: Mapping[str, Callable[[np.random.Generator], Event]] = {
 
 def seeded(name: str, count: int = 1) -> Iterator[Event]:
     """Draw `count` events of a kind; the first is the one in this folder."""
-    for child in np.random.SeedSequence(SEED).spawn(count):
+    for child in np.random.SeedSequence([SEED, list(EVENTS).index(name)]).spawn(count):
         yield EVENTS[name](np.random.default_rng(child))
 
 

@@ -1,12 +1,38 @@
 """``twlocate inspect``: what is in a recording."""
 
+import sys
 from pathlib import Path
 
 import click
 
+from twlocate.commands.failing import EXIT_USAGE
+
 
 @click.command()
 @click.argument("files", nargs=-1, required=True, type=click.Path(path_type=Path))
-def inspect(files: tuple[Path, ...]) -> None:
-    """Show what the recordings FILES hold."""
-    raise NotImplementedError(files)
+@click.option("--json", "as_json", is_flag=True, help="Print one JSON object instead of tables.")
+def inspect(files: tuple[Path, ...], as_json: bool) -> None:
+    """Show what the recordings FILES hold.
+
+    For each: channels, rates, time axis, how far its clock may be trusted, and every repair made in reading it.
+    A file that cannot be read is named on stderr, the others are shown all the same, and the exit status is 2.
+    """
+    from twlocate.errors import RecordError
+    from twlocate.records import Record, read
+    from twlocate.reporting.inspection import inspection_json, print_inspection
+
+    records: list[Record] = []
+    faults: list[str] = []
+    for path in files:
+        try:
+            records.append(read(path))
+        except RecordError as error:
+            faults.append(str(error))
+    if as_json:
+        click.echo(inspection_json(records, faults))
+    else:
+        print_inspection(records)
+    for fault in faults:
+        click.echo(f"error: {fault}", err=True)
+    if faults:
+        sys.exit(EXIT_USAGE)

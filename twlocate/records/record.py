@@ -34,6 +34,8 @@ class Clock:
     u_s: float | None = None
     usable: bool = True
     notes: tuple[str, ...] = ()
+    utc_offset_s: int | None = None
+    """Offset from UTC of the clock the file is stamped by, already taken off; None where the file does not state it."""
 
 
 @dataclass(frozen=True)
@@ -48,9 +50,15 @@ class Channel:
     """The channel was sampled this much later than the record's stamps say."""
     step: float | None = None
     """Size of one converter step in `unit`, where the format tells."""
+    offset: float = 0.0
+    """The reading at count 0 of the converter, in `unit`."""
     low: float | None = None
     """Smallest and largest reading the converter can give, in `unit`, where the format tells."""
     high: float | None = None
+    side: str = ""
+    """``"primary"`` or ``"secondary"``: the side of the transducer the readings are on, where the format tells."""
+    ratio: float | None = None
+    """Primary over secondary, where the format tells."""
 
     @property
     def missing(self) -> int:
@@ -113,7 +121,7 @@ class Record:
     station: str = ""
     device: str = ""
     start_ns: int | None = None
-    """Zero of the record's time axis, integer nanoseconds UTC since 1970-01-01; None where there is no absolute time."""
+    """Zero of the record's time axis, integer nanoseconds UTC since 1970-01-01; None without absolute time."""
     resolution_ns: int | None = None
     """Size of the last digit in which the start is given."""
     trigger_s: float | None = None
@@ -122,6 +130,8 @@ class Record:
     status: tuple[StatusChannel, ...] = ()
     clock: Clock = field(default_factory=Clock)
     repairs: tuple[Repair, ...] = ()
+    files: tuple[Path, ...] = ()
+    """Every file the record was read from."""
 
     @property
     def n_samples(self) -> int:

@@ -1,0 +1,211 @@
+"""A COMTRADE record from its parts."""
+
+from dataclasses import dataclass
+from pathlib import Path
+
+import numpy as np
+from numpy.typing import NDArray
+
+from twlocate.arrays import FloatArray
+from twlocate.errors import RecordError
+from twlocate.records.comtrade.ascii import AsciiRows, parse_ascii
+from twlocate.records.comtrade.binary import ANALOG_TYPES, BinaryRows, open_binary
+from twlocate.records.comtrade.clock import stated_clock
+from twlocate.records.comtrade.configuration import AnalogLine, Configuration, parse_configuration
+from twlocate.records.comtrade.container import COMPANIONS, Parts, find_parts
+from twlocate.records.comtrade.dates import utc_ns
+from twlocate.records.comtrade.timeline import Timeline, timeline
+from twlocate.records.record import Channel, Clock, Record, StatusChannel
+from twlocate.records.repairs import GUESS, LIKELY, SURE, RepairLog
+from twlocate.records.text import decode
+from twlocate.records.windows import windowed_stretches
+
+NUMBER_SHARE = 0.9
+"""Rows numbered one after another in at least this share tell that the row layout is right."""
+
+
+@dataclass(frozen=True)
+class Scaling:
+    """Scale, offset and count limits of the analog channels, arrays of shape (channels,)."""
+
+    a: FloatArray
+    b: FloatArray
+    low: FloatArray
+    high: FloatArray
+
+
+def read_comtrade(path: Path, span: tuple[float, float] | None) -> Record:
+    """Read a CFG/DAT pair, from either file, or a CFF.
+
+    Raises
+    ------
+    RecordError
+        It cannot be read even with repairs.
+    """
+    if path.suffix.lower() in COMPANIONS:
+        raise RecordError("a companion text without samples; give the .cfg file")
+    log = RepairLog()
+    parts = find_parts(path, log)
+    configuration = parse_configuration(decode(parts.cfg, "CFG", log), log)
+    rows = open_rows(parts, configuration, log)
+    _check_row_count(len(rows), configuration, log)
+    times = timeline(rows.stamps(), configuration.tick_s, configuration.rates, len(rows), log)
+    scaling = _scaling(configuration.analog)
+    stretches, ranges = windowed_stretches(times.stretches, span) if span else (times.stretches, [(0, len(rows))])
+    analog, status = _samples(rows, scaling, len(configuration.status), ranges)
+    return Record(
+        path=path,
+        format=f"COMTRADE {configuration.edition} {rows.file_type}",
+        channels=_channels(configuration.analog, analog, log),
+        stretches=stretches,
+        station=configuration.station,
+        device=configuration.device,
+        start_ns=_start_ns(configuration),
+        resolution_ns=configuration.start.resolution_ns if configuration.start else None,
+        trigger_s=_trigger_s(configuration, times, log),
+        line_frequency_hz=configuration.line_frequency_hz,
+        status=_status(configuration, status),
+        clock=_clock(configuration, times, log),
+        repairs=tuple(log.entries),
+        files=tuple(dict.fromkeys((parts.cfg_path, parts.data_path))),
+    )
+
+
+def open_rows(parts: Parts, configuration: Configuration, log: RepairLog) -> BinaryRows | AsciiRows:
+    """Open the samples by the stated file type, or by the one the data fits where the stated one does not.
+
+    Raises
+    ------
+    RecordError
+        The data fits no file type.
+    """
+    n_analog, n_status = len(configuration.analog), len(configuration.status)
+    stated = configuration.file_type or parts.file_type
+    fitting = _fitting_type(parts, stated, n_analog, n_status)
+    if fitting != stated:
+        log.add(f"file type {stated or 'not stated'}", "CFG", f"the data is {fitting}", LIKELY)
+    if fitting == "ASCII":
+        with parts.data_path.open("rb") as file:
+            file.seek(parts.offset)
+            return parse_ascii(file.read(parts.length), n_analog, n_status, log)
+    rows = open_binary(parts.data_path, parts.offset, parts.length, fitting, n_analog, n_status)
+    if len(rows) == 0:
+        raise RecordError(f"the DAT has {parts.length} bytes, less than one row of {rows.rows.dtype.itemsize}")
+    if rows.tail:
+        stray = not rows.tail.strip(b"\x1a\r\n\0")
+        assumed = "stray bytes, ignored" if stray else "a row cut short, left out"
+        log.add(f"{len(rows.tail)} bytes after the last whole row", "DAT", assumed, SURE if stray else LIKELY)
+    return rows
+
+
+def _fitting_type(parts: Parts, stated: str, n_analog: int, n_status: int) -> str:
+    """Return the stated file type, unless the sample numbers count up only under another one."""
+    with parts.data_path.open("rb") as file:
+        file.seek(parts.offset)
+        head = file.read(min(parts.length, 4096))
+    if not head.strip():
+        raise RecordError("the DAT is empty")
+    is_text = not head.rstrip(b"\x1a\0").translate(None, b"0123456789+-., \t\r\neENnAaIiFf\x1a")
+    if is_text:
+        return "ASCII"
+    candidates = [stated, *ANALOG_TYPES] if stated in ANALOG_TYPES else list(ANALOG_TYPES)
+    fitting = [name for name in candidates if _numbered(parts, name, n_analog, n_status)]
+    return fitting[0] if fitting else stated or candidates[0]
+
+
+def _numbered(parts: Parts, file_type: str, n_analog: int, n_status: int) -> bool:
+    rows = open_binary(parts.data_path, parts.offset, parts.length, file_type, n_analog, n_status)
+    steps = np.diff(rows.rows["number"][:64].astype(np.int64))
+    return len(rows) == 1 or (len(steps) > 0 and float(np.mean(steps == 1)) >= NUMBER_SHARE)
+
+
+def _check_row_count(rows: int, configuration: Configuration, log: RepairLog) -> None:
+    declared = configuration.declared_rows
+    if rows != declared:
+        assumed = "only what is there is read" if rows < declared else "all rows kept"
+        log.add(f"{rows} rows, {declared} declared", "DAT", assumed, SURE)
+
+
+def _scaling(analog: tuple[AnalogLine, ...]) -> Scaling:
+    columns = np.array([(line.a, line.b, line.low, line.high) for line in analog], dtype=np.float64).reshape(-1, 4)
+    return Scaling(*np.ascontiguousarray(columns.T))
+
+
+def _samples(
+    rows: BinaryRows | AsciiRows, scaling: Scaling, n_status: int, ranges: list[tuple[int, int]]
+) -> tuple[FloatArray, NDArray[np.uint8]]:
+    """Return readings and states of the rows in `ranges`, shape (channels, rows)."""
+    analog = [rows.analog(first, stop, scaling.a, scaling.b, scaling.high) for first, stop in ranges]
+    status = [rows.status(first, stop, n_status) for first, stop in ranges]
+    return (analog[0], status[0]) if len(ranges) == 1 else (np.hstack(analog), np.hstack(status))
+
+
+def _channels(lines: tuple[AnalogLine, ...], analog: FloatArray, log: RepairLog) -> tuple[Channel, ...]:
+    """Return the analog channels, the count of missing samples of each in the log."""
+    channels = tuple(_channel(line, samples) for line, samples in zip(lines, analog, strict=True))
+    for channel in channels:
+        if channel.missing:
+            log.add(f"{channel.missing} samples missing", f"channel {channel.name!r}", "left out (NaN)", SURE)
+    return channels
+
+
+def _channel(line: AnalogLine, samples: FloatArray) -> Channel:
+    ends = sorted((line.a * line.low + line.b, line.a * line.high + line.b))
+    known = all(np.isfinite(ends)) and ends[0] < ends[1]
+    ratio = line.primary / line.secondary if line.primary and line.secondary else None
+    return Channel(
+        name=line.name, unit=line.unit, samples=samples, phase=line.phase, skew_s=line.skew_us * 1e-6,
+        step=abs(line.a) or None, offset=line.b,
+        low=ends[0] if known else None, high=ends[1] if known else None,
+        side={"P": "primary", "S": "secondary"}.get(line.side, ""), ratio=ratio,
+    )  # fmt: skip
+
+
+def _status(configuration: Configuration, states: NDArray[np.uint8]) -> tuple[StatusChannel, ...]:
+    pairs = zip(configuration.status, states, strict=True)
+    return tuple(StatusChannel(line.name, row, line.normal) for line, row in pairs)
+
+
+def _start_ns(configuration: Configuration) -> int | None:
+    if configuration.start is None:
+        return None
+    return utc_ns(configuration.start, configuration.time_offset_s)
+
+
+def _trigger_s(configuration: Configuration, times: Timeline, log: RepairLog) -> float | None:
+    """Return the trigger in seconds from the start; None, with a repair, where it lies outside the record."""
+    if configuration.trigger is None or configuration.start is None:
+        return None
+    trigger_s = (configuration.trigger.ns - configuration.start.ns) * 1e-9
+    ends = [stretch.start_s + stretch.span_s for stretch in times.stretches]
+    step_s = 1.0 / times.stretches[0].rate_hz
+    if -step_s <= trigger_s <= max(ends) + step_s:
+        return trigger_s
+    log.add(f"trigger {trigger_s:.6g} s after the start, outside the record", "CFG", "trigger unknown", SURE)
+    return None
+
+
+def _clock(configuration: Configuration, times: Timeline, log: RepairLog) -> Clock:
+    doubts = list(times.doubts)
+    if configuration.start is None:
+        doubts.append("no start time")
+    doubts += _first_stamp_doubts(configuration, times, log)
+    return stated_clock(configuration.time_quality, configuration.leap_second, configuration.time_offset_s, doubts)
+
+
+def _first_stamp_doubts(configuration: Configuration, times: Timeline, log: RepairLog) -> list[str]:
+    """Weigh a first stamp other than 0: the start is the first sample's, unless stamp 0 is the start's.
+
+    The standard gives the start as the time of the first sample. A recorder that counts its stamps from the
+    trigger shows it by a first stamp of start minus trigger.
+    """
+    first_s = times.first_stamp_s
+    if first_s == 0.0:
+        return []
+    start, trigger = configuration.start, configuration.trigger
+    what = f"first stamp is {first_s:.9g} s, not 0"
+    if start and trigger and abs((start.ns - trigger.ns) * 1e-9 - first_s) <= 2.0 * configuration.tick_s:
+        log.add(what, "DAT", "stamps counted from the trigger; the start is the first sample's", SURE)
+        return []
+    log.add(what, "DAT", "the start is taken as the first sample's", GUESS)
+    return [f"the start may belong to stamp 0, {abs(first_s):.6g} s away from the first sample"]
