@@ -38,7 +38,9 @@ class Event:
         folder.mkdir(parents=True, exist_ok=True)
         self.write_recordings(folder)
         (folder / "case.toml").write_text(self.case, encoding="utf-8")
-        (folder / "truth.json").write_text(json.dumps(self.truth, indent=2, ensure_ascii=False) + "\n", encoding="utf-8")
+        (folder / "truth.json").write_text(
+            json.dumps(self.truth, indent=2, ensure_ascii=False) + "\n", encoding="utf-8"
+        )
         return folder / "case.toml"
 
 
@@ -395,7 +397,7 @@ speed = "166.0 m/µs ± 0.8 m/µs"
 node = "Substation"
 recording = "pulse-echo.csv"
 channels = { v = "voltage" }
-launches_pulse = true
+launches = "pulse"
 """
 
 CABLE_RATE_HZ = 200e6

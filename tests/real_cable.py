@@ -62,7 +62,7 @@ def step_record(name):
     n = 2 * ZERO_PADDING * (net.f.size - 1)
     impulse = np.fft.irfft((1 + net.s[:, 0, 0]) * window, n)
     step = np.cumsum(np.roll(impulse, LEAD_SAMPLES))
-    return step[:SAMPLES] - step[0], n * (net.f[1] - net.f[0])
+    return step[:SAMPLES] - step[0], float(n * (net.f[1] - net.f[0]))
 
 
 def write_case(folder, name, calibration):
@@ -91,7 +91,7 @@ speed = "{c.speed} m/s ± {c.u_speed} m/s"
 node = "port"
 recording = "step.csv"
 channels = {{ v = "voltage" }}
-launches_pulse = true
+launches = "step"
 """
     path = folder / "case.toml"
     path.write_text(text, encoding="utf-8")

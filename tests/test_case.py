@@ -72,7 +72,7 @@ def test_reads_everything_in_si(folder):
     assert second.speed.value == pytest.approx(0.57 * 299_792_458)
     a, b = case.terminals
     assert (a.clock.u, a.delay.value, a.clock_free) == (pytest.approx(1e-7), pytest.approx(0.9e-6), False)
-    assert (b.clock, b.clock_free, b.launches_pulse) == (None, True, False)
+    assert (b.clock, b.clock_free, b.launches) == (None, True, None)
     assert a.recording == folder / "a.csv"
     assert [(p.name, p.section, p.distance_m) for p in case.places] == [("T1", 0, 340.0), ("T2", 1, 1500.0)]
     assert (case.places[0].lat, case.places[1].lat) == (54.1, None)

@@ -38,7 +38,8 @@ class Terminal:
     clock_free: bool
     delay: Quantity
     """Transducer and secondary cabling, s."""
-    launches_pulse: bool
+    launches: str | None
+    """``pulse`` or ``step`` where the terminal sends its own signal into the route; None where it only listens."""
 
 
 @dataclass(frozen=True)
@@ -143,7 +144,7 @@ class _TerminalForm(_Form):
     channels: dict[str, str] = Field(min_length=1)
     clock: Annotated[Quantity | Literal["free"] | None, BeforeValidator(_clock)] = None
     delay: Duration = Quantity(0.0)
-    launches_pulse: bool = False
+    launches: Literal["pulse", "step"] | None = None
 
 
 class _PlacesForm(_Form):
@@ -304,7 +305,7 @@ def _terminal(table: _TerminalForm, folder: Path) -> Terminal:
         clock=table.clock if isinstance(table.clock, Quantity) else None,
         clock_free=free,
         delay=table.delay,
-        launches_pulse=table.launches_pulse,
+        launches=table.launches,
     )
 
 

@@ -14,6 +14,7 @@ from twlocate.observing import Observation, observe
 from twlocate.position import Estimate, Reading, Station, estimate
 from twlocate.quantity import Quantity
 from twlocate.routes import transit_s
+from twlocate.scales import time_scale, time_text
 
 TRANSIT_SIGMAS = 4.0
 """A difference of first arrivals may exceed the transit time by this many standard uncertainties."""
@@ -98,7 +99,7 @@ def locate(case: Case, *, coverage: float = 0.95) -> Finding:
 
 def _station(observation: Observation) -> Station:
     terminal = observation.terminal
-    return Station(terminal.node, _clock(observation), terminal.delay, terminal.launches_pulse)
+    return Station(terminal.node, _clock(observation), terminal.delay, terminal.launches is not None)
 
 
 def _clock(observation: Observation) -> Quantity | None:
@@ -133,18 +134,16 @@ def _gates(observations: Sequence[Observation]) -> list[Gate]:
 
 def _clock_gate(observation: Observation) -> Gate:
     clock = _clock(observation)
-    if observation.terminal.launches_pulse:
+    if observation.terminal.launches:
         return Gate("clock", True, "not needed: pulse and echo are timed by the same clock")
     if clock is None:
         return Gate("clock", False, "free: neither the case file nor the recording states an uncertainty for it")
-    return Gate("clock", True, f"standard uncertainty {clock.u / 1e-6:.3g} µs")
+    return Gate("clock", True, f"standard uncertainty {time_text(clock.u)}")
 
 
 def _transit_checks(case: Case, stations: Sequence[Station], readings: Sequence[Reading]) -> list[Gate]:
     """First arrivals at two ends cannot differ by more than the time a wave takes between them."""
-    first = {
-        r.station: r for r in reversed(readings) if stations[r.station].clock and not stations[r.station].launches_pulse
-    }
+    first = {r.station: r for r in reversed(readings) if stations[r.station].clock and not stations[r.station].launches}
     return [_transit_check(case, stations, first[a], first[b]) for a, b in itertools.combinations(sorted(first), 2)]
 
 
@@ -154,11 +153,12 @@ def _transit_check(case: Case, stations: Sequence[Station], one: Reading, other:
     transit = transit_s(case.route, start, end)
     difference = _true_time(stations, late).value - _true_time(stations, early).value
     u = sum(q.u**2 for q in (transit, _true_time(stations, late), _true_time(stations, early))) ** 0.5
+    scale = time_scale(max(difference, transit.value), u)
     detail = (
-        f"the first front reaches {end} {difference / 1e-6:.3f} µs after {start}; "
-        f"a wave needs {transit.value / 1e-6:.3f} ± {u / 1e-6:.3f} µs from one to the other"
+        f"the first front reaches {end} {scale(difference)} after {start}; "
+        f"a wave needs {scale(transit.value)} from one to the other (u {time_text(u)})"
     )
-    passed = difference <= transit.value + TRANSIT_SIGMAS * u
+    passed = bool(difference <= transit.value + TRANSIT_SIGMAS * u)
     way_out = "" if passed else "; a clock is off, or a first front is missing: check the clocks, or set one to 'free'"
     return Gate(f"{start} and {end}: arrival difference within the transit time", passed, detail + way_out, fatal=True)
 

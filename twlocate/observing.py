@@ -1,12 +1,12 @@
 """From a terminal's recording to the arrivals in it: channels to waves, waves to picks."""
 
 from collections.abc import Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
 from twlocate.arrays import FloatArray
-from twlocate.arrivals import Gate, Picks, Trace, pick, strongest_mode
+from twlocate.arrivals import Arrival, Gate, Picks, Trace, pick, strongest_mode
 from twlocate.case import Case, Terminal
 from twlocate.errors import RecordError
 from twlocate.quantity import unit_scale
@@ -22,6 +22,9 @@ PHASES = "abc"
 
 FEWEST_SAMPLES = 64
 """Fewer samples than this hold no noise to measure a front against."""
+
+PULSE_STAYS_UP = 0.4
+"""Between its edges a pulse stays above this share of its height."""
 
 FLAT_TOP = 3
 """This many equal readings at the limit of a channel are taken for clipping."""
@@ -72,6 +75,8 @@ def observe(case: Case, terminal: Terminal) -> Observation:
     waves = _waves(signals, _impedance_at(case, terminal.node))
     candidates = [(wave, pick(_trace(signals, wave))) for wave in waves]
     wave, picks = max(candidates, key=lambda candidate: _strength(candidate[1]))
+    if terminal.launches == "pulse":
+        picks = replace(picks, arrivals=without_trailing_edges(picks.arrivals, picks.trace))
     return Observation(terminal, record, wave, picks, (*picks.gates, _clipping(signals, wave, picks)))
 
 
@@ -202,6 +207,41 @@ def _trace(signals: _Signals, wave: Wave) -> Trace:
         step=float(np.hypot.reduce(steps)),
         line_frequency_hz=signals.line_frequency_hz,
     )
+
+
+# ---------------------------------------------------------------- pulses
+
+
+def without_trailing_edges(arrivals: tuple[Arrival, ...], trace: Trace) -> tuple[Arrival, ...]:
+    """Leave out the falling edge of a launched pulse and those of its echoes.
+
+    The pulse lasts from the first front to the second if that has the other sign and the trace stays up in
+    between. A pulse too short for that is one arrival, and nothing is left out.
+    """
+    width_s = _pulse_width_s(arrivals, trace)
+    kept: list[Arrival] = []
+    for arrival in arrivals:
+        ends = (
+            front.polarity != arrival.polarity and abs(arrival.time_s - front.time_s - width_s) < width_s / 2
+            for front in kept
+        )
+        if width_s == 0 or not any(ends):
+            kept.append(arrival)
+    return tuple(kept)
+
+
+def _pulse_width_s(arrivals: tuple[Arrival, ...], trace: Trace) -> float:
+    """Return how long the launched pulse lasts; 0 where its two edges are not told apart."""
+    if len(arrivals) < 2 or arrivals[0].polarity == arrivals[1].polarity:
+        return 0.0
+    start, end = (round((arrival.time_s - trace.start_s) * trace.rate_hz) for arrival in arrivals[:2])
+    third = (end - start) // 3
+    middle = trace.samples[start + third : end - third]
+    before = trace.samples[: max(start - third, 1)]
+    stays_up = middle.size > 0 and arrivals[0].polarity * (np.median(middle) - np.median(before)) > (
+        PULSE_STAYS_UP * arrivals[0].amplitude
+    )
+    return arrivals[1].time_s - arrivals[0].time_s if stays_up else 0.0
 
 
 # ---------------------------------------------------------------- clipping

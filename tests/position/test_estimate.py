@@ -126,7 +126,7 @@ def test_highest_density_of_two_peaks_is_in_two_pieces():
             "clock of B is free",
         ),
         ([Station("A", CLOCK)], [Reading(0, 0.0, 1e-7)], "add a second terminal"),
-        ([Station("A", None, launches_pulse=True)], [Reading(0, 0.0, 1e-7)], "no echo stands out of the noise"),
+        ([Station("A", None, launches=True)], [Reading(0, 0.0, 1e-7)], "no echo stands out of the noise"),
         (ENDS, [Reading(0, 0.0, 1e-7), Reading(1, 1.0, 1e-7)], "contradict"),
         (
             ENDS,

@@ -39,7 +39,7 @@ def test_e1_exactly():
 def test_e2_e3_one_ended_pulse_and_far_end():
     t2, t3 = 2 * 73_500.0 / 2.94e8, 2 * 200e3 / 2.94e8
     readings = [Reading(0, 0.0, 1e-8), Reading(0, t2, 1e-8), Reading(0, t3, 1e-8)]
-    found = estimate(line(), [Station("A", None, launches_pulse=True)], readings)
+    found = estimate(line(), [Station("A", None, launches=True)], readings)
     assert found.point.distance_m == pytest.approx(73_500.0, abs=MILLIMETRE)
     assert found.fits[1].path == "echo of the event"
     assert found.fits[2].path == "echo of B"
@@ -50,7 +50,7 @@ def test_e4_far_end_echo_calibrates_the_speed():
     t2, t3 = 2 * 73_500.0 / 2.94e8, 2 * 200e3 / 2.94e8
     route = line(speed=2.90e8, u_speed=4e6)
     readings = [Reading(0, 0.0, 1e-9), Reading(0, t2, 1e-9), Reading(0, t3, 1e-9)]
-    found = estimate(route, [Station("A", None, launches_pulse=True)], readings)
+    found = estimate(route, [Station("A", None, launches=True)], readings)
     assert found.point.distance_m == pytest.approx(200e3 * t2 / t3, abs=1.0)  # slowness is taken as linear in speed
     assert found.point.u_m < 1.0
 

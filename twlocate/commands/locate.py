@@ -32,18 +32,16 @@ def locate(case: Path, as_json: bool, out: Path | None, coverage: float) -> None
     with failing_in_one_line():
         finding = find(load_case(case), coverage=coverage)
         document = json.dumps(finding_document(finding), indent=2, ensure_ascii=False, allow_nan=False)
-        if out is not None:
+        if out is not None and finding.estimate is not None:
             from twlocate.reporting.folder import write_folder
 
             write_folder(finding, document, out)
     if as_json:
         click.echo(document)
     else:
-        from rich.console import Console
+        from twlocate.reporting.text import print_finding
 
-        from twlocate.reporting.text import finding_text
-
-        Console().print(finding_text(finding))
+        print_finding(finding)
     if finding.estimate is None:
         click.echo(f"no position: {finding.reason}", err=True)
         sys.exit(EXIT_NO_POSITION)

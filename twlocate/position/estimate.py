@@ -236,7 +236,7 @@ def _too_little(stations: Sequence[Station], readings: Sequence[Reading]) -> str
     silent = [station.node for s, station in enumerate(stations) if s not in seen]
     if silent:
         return f"no arrival stands out of the noise at {', '.join(silent)}; add another record or another terminal"
-    if any(station.launches_pulse for station in stations):
+    if any(station.launches for station in stations):
         return "no echo stands out of the noise behind the launched pulse; raise the gain or the pulse width"
     free = [station.node for station in stations if station.clock is None]
     if free:

@@ -16,7 +16,8 @@ class Station:
     """By how much its clock is ahead of the common time, s; None where its clock is free."""
     delay: Quantity = ZERO
     """How much later than the wave its recorder sees it, s."""
-    launches_pulse: bool = False
+    launches: bool = False
+    """Whether its first reading is a signal it sent into the route itself."""
 
 
 @dataclass(frozen=True)

@@ -72,7 +72,7 @@ def explain(route: Route, stations: Sequence[Station], readings: Sequence[Readin
     """List every explanation of the readings whose prior is not negligible; the priors add up to one."""
     by_station = [[i for i, reading in enumerate(readings) if reading.station == s] for s in range(len(stations))]
     choices = [
-        list(_of_pulse(route, station, own, readings) if station.launches_pulse else _of_first_front(own, readings))
+        list(_of_pulse(route, station, own, readings) if station.launches else _of_first_front(own, readings))
         for station, own in zip(stations, by_station, strict=True)
     ]
     found = []

@@ -71,7 +71,7 @@ class LinearModel:
         normal = self.flat.T @ through_flat
         projected = inverse - through_flat @ np.linalg.solve(normal, through_flat.transpose(0, 2, 1))
         log_norm = -0.5 * (np.linalg.slogdet(covariance)[1] + np.linalg.slogdet(normal)[1])
-        return projected, log_norm
+        return np.asarray(projected, dtype=np.float64), np.asarray(log_norm, dtype=np.float64)
 
     def log_likelihood(self, x: FloatArray, window_s: float) -> FloatArray:
         """Return log p(times | x) at each x, shape (G,).
@@ -86,7 +86,7 @@ class LinearModel:
         weights, log_norm = self.weights(x)
         residual = self.residual(x)
         misfit = np.einsum("gi,gij,gj->g", residual, weights, residual)
-        return proper + log_norm - 0.5 * misfit
+        return np.asarray(proper + log_norm - 0.5 * misfit, dtype=np.float64)
 
     def best_x(self, length_m: float) -> tuple[float, float]:
         """Return the x of least misfit on [0, `length_m`] and its standard uncertainty, m.

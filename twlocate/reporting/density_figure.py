@@ -6,7 +6,7 @@ import numpy as np
 
 from twlocate.locating import Finding
 from twlocate.position import Estimate, Piece
-from twlocate.reporting.lengths import Scale, length_scale
+from twlocate.scales import Scale, length_scale
 from twlocate.routes import Route
 
 if TYPE_CHECKING:
@@ -30,7 +30,7 @@ def density_figure(finding: Finding, found: Estimate) -> "Figure":
     widths = np.maximum(lengths / lengths.max(), NARROWEST_PANEL)
     figure = Figure(figsize=(10, 6.5), layout="constrained")
     figure.suptitle(finding.case.title or finding.case.path.stem)
-    upper, lower = figure.subfigures(2, 1, height_ratios=[1, 1.4])
+    upper, lower = figure.subfigures(2, 1, height_ratios=[1, 1.4], squeeze=False)[:, 0]
     panels = upper.subplots(1, len(lengths), sharey=True, width_ratios=widths, squeeze=False)[0]
     for index, axes in enumerate(panels):
         _draw_section(axes, index, found, route)

@@ -10,15 +10,15 @@ from typing import TYPE_CHECKING
 
 from twlocate.errors import CaseError
 from twlocate.locating import Finding
+from twlocate.reporting.text import plain_text
 
 if TYPE_CHECKING:
     from matplotlib.figure import Figure
 
 DPI = 110
-TEXT_WIDTH = 110
 
 
-def write_folder(finding: Finding, document: str, text: str, folder: Path) -> None:
+def write_folder(finding: Finding, document: str, folder: Path) -> None:
     """Write ``finding.json``, ``finding.txt`` and the figures.
 
     Raises
@@ -31,7 +31,7 @@ def write_folder(finding: Finding, document: str, text: str, folder: Path) -> No
     try:
         with _becoming(folder) as unfinished:
             (unfinished / "finding.json").write_text(document + "\n", encoding="utf-8")
-            (unfinished / "finding.txt").write_text(text, encoding="utf-8")
+            (unfinished / "finding.txt").write_text(plain_text(finding), encoding="utf-8")
             for name, figure in _figures(finding):
                 figure.savefig(unfinished / f"{name}.png", dpi=DPI)
     except OSError as error:

@@ -4,7 +4,7 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from twlocate.reporting.lengths import length_scale, time_scale, two_digits
+from twlocate.scales import length_scale, length_text, time_scale, time_text, two_digits
 
 
 @pytest.mark.parametrize(
@@ -46,3 +46,19 @@ def test_what_is_printed_is_within_a_tenth_of_u(extent, u, value):
 )
 def test_two_digits(value, text):
     assert two_digits(value) == text
+
+
+@pytest.mark.parametrize(
+    ("write", "value", "text"),
+    [
+        (length_text, 1.148, "1.1 m"),
+        (length_text, 88.2, "88 m"),
+        (length_text, 0.0523, "52 mm"),
+        (length_text, 12_345.0, "12 km"),
+        (time_text, 2e-3, "2.0 ms"),
+        (time_text, 240e-9, "240 ns"),
+        (time_text, 0.0, "0 ns"),
+    ],
+)
+def test_small_values(write, value, text):
+    assert write(value) == text
