@@ -182,7 +182,7 @@ def _in_modes(signals: _Signals, name: str, weights: dict[str, float]) -> Wave:
     if _phases(signals, next(iter(weights))) != tuple(PHASES):
         return Wave(name, weights)
     in_phases = [_sum(signals, {letter + phase: w for letter, w in weights.items()}) for phase in PHASES]
-    mode = strongest_mode(np.array(in_phases), signals.rate_hz)
+    mode = strongest_mode(np.array(in_phases))
     shares = zip(PHASES, AERIAL_MODES[mode], strict=True)
     of_roles = {letter + phase: w * share for phase, share in shares for letter, w in weights.items() if share}
     return Wave(f"{name}, {mode}", of_roles)
@@ -258,7 +258,7 @@ def _clipping(signals: _Signals, wave: Wave, picks: Picks) -> Gate:
     window = slice(max(at - reach, 0), at + reach)
     clipped = [role for role in wave.weights if _flat_at_limit(signals.by_role[role], window)]
     detail = f"{', '.join(clipped)} at the end of its range" if clipped else "all within their range"
-    return Gate(name, not clipped, detail)
+    return Gate(name, not clipped, detail, fatal=True)
 
 
 def _flat_at_limit(samples: FloatArray, window: slice) -> bool:

@@ -48,7 +48,7 @@ class LinearModel:
     @property
     def informative(self) -> bool:
         """Whether the times say anything about x at all."""
-        return self.times.size > self.flat.shape[1]
+        return bool(self.times.size > self.flat.shape[1])
 
     def jacobian(self, x: FloatArray) -> FloatArray:
         """Return d t / d input at each x, shape (G, n, P)."""

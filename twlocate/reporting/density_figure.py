@@ -6,8 +6,8 @@ import numpy as np
 
 from twlocate.locating import Finding
 from twlocate.position import Estimate, Piece
-from twlocate.scales import Scale, length_scale
 from twlocate.routes import Route
+from twlocate.scales import Scale, length_scale
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes

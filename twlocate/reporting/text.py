@@ -12,8 +12,8 @@ from twlocate.locating import Finding
 from twlocate.position import Estimate, Fit, Piece, Reading
 from twlocate.reporting.cautions import cautions_for
 from twlocate.reporting.document import utc_text
-from twlocate.scales import Scale, length_scale, length_text, time_scale, time_text, two_digits
 from twlocate.routes import Route
+from twlocate.scales import Scale, length_scale, length_text, time_scale, time_text, two_digits
 
 FILE_WIDTH = 120
 BUDGET_ROWS = 6
