@@ -86,7 +86,7 @@ def assemble(
     return Record(
         path=path, format=format_name, channels=channels, stretches=stretches, station=settings.get("station", ""),
         start_ns=start_ns, resolution_ns=resolution, clock=_clock(settings, start_ns, notes, doubts),
-        repairs=tuple(log.entries),
+        repairs=log.repairs,
     )  # fmt: skip
 
 

@@ -1,21 +1,20 @@
 """The binary DAT forms: rows of number, stamp, analog words and packed status bits, little-endian (C37.111-2013)."""
 
 from dataclasses import dataclass
-from pathlib import Path
 
 import numpy as np
 from numpy.typing import NDArray
 
 from twlocate.arrays import FloatArray
+from twlocate.records.comtrade.container import Parts
+from twlocate.records.comtrade.scaling import Scaling, scale_block
 from twlocate.records.comtrade.timeline import NO_STAMP
 
-BLOCK_BYTES = 1 << 20
+BLOCK_BYTES = 1 << 19
 """Rows are scaled in blocks of about this size, so that a block stays in the processor's cache."""
 
 MISSING_STAMP = 0xFFFFFFFF
 ANALOG_TYPES = {"BINARY": "<i2", "BINARY32": "<i4", "FLOAT32": "<f4"}
-MISSING = {"BINARY": -(2**15), "BINARY32": -(2**31), "FLOAT32": float(np.finfo(np.float32).min)}
-"""Missing-value codes: 8000 hex, 80000000 hex, and the most negative single-precision number."""
 
 
 def row_type(file_type: str, n_analog: int, n_status: int) -> np.dtype[np.void]:
@@ -44,36 +43,23 @@ class BinaryRows:
         """Return the number of whole rows."""
         return len(self.rows)
 
-    def numbers(self) -> NDArray[np.int64]:
-        """Return the sample numbers."""
-        return self.rows["number"].astype(np.int64)
-
-    def stamps(self) -> NDArray[np.int64]:
-        """Return the stamps in ticks, `NO_STAMP` where missing."""
-        stamps = self.rows["stamp"].astype(np.int64)
+    def stamps(self, index: slice | NDArray[np.int64]) -> NDArray[np.int64]:
+        """Return the stamps of some rows in ticks, `NO_STAMP` where missing."""
+        stamps = self.rows["stamp"][index].astype(np.int64)
         stamps[stamps == MISSING_STAMP] = NO_STAMP
         return stamps
 
-    def analog(self, first: int, stop: int, a: FloatArray, b: FloatArray, _: FloatArray) -> FloatArray:
-        """Return ``a * count + b`` of rows `first` to `stop`, NaN where missing.
+    def sample_numbers(self) -> NDArray[np.int64]:
+        """Return the sample numbers."""
+        return self.rows["number"].astype(np.int64)
 
-        Parameters
-        ----------
-        first, stop
-            Range of rows.
-        a, b
-            Scale and offset, shape (channels,).
-
-        Returns
-        -------
-        ndarray, shape (channels, stop - first)
-        """
-        out = np.empty((len(a), stop - first))
+    def analog(self, first: int, stop: int, scaling: Scaling) -> FloatArray:
+        """Return the readings of rows `first` to `stop`, shape (channels, stop - first)."""
+        out = np.empty((len(scaling.a), stop - first))
         block = max(1, BLOCK_BYTES // self.rows.dtype.itemsize)
         for start in range(first, stop, block):
-            counts = self.rows["analog"][start : min(start + block, stop)].T
-            view = out[:, start - first : start - first + counts.shape[1]]
-            scale_block(counts, a, b, MISSING[self.file_type], view)
+            counts = np.ascontiguousarray(self.rows["analog"][start : min(start + block, stop)].T)
+            scale_block(counts, scaling, out[:, start - first : start - first + counts.shape[1]])
         return out
 
     def status(self, first: int, stop: int, n_status: int) -> NDArray[np.uint8]:
@@ -87,23 +73,14 @@ class BinaryRows:
         return out
 
 
-def scale_block(counts: NDArray[np.generic], a: FloatArray, b: FloatArray, missing: float, out: FloatArray) -> None:
-    """Write ``a * counts + b`` into `out`, NaN where a count equals `missing`; all of shape (channels, rows)."""
-    np.multiply(counts, a[:, None], out=out, dtype=np.float64, casting="unsafe")
-    out += b[:, None]
-    gone = counts == missing
-    if gone.any():
-        out[gone] = np.nan
-
-
-def open_binary(path: Path, offset: int, length: int, file_type: str, n_analog: int, n_status: int) -> BinaryRows:
-    """Map `length` bytes from `offset` of a file as binary rows."""
+def open_binary(parts: Parts, file_type: str, n_analog: int, n_status: int) -> BinaryRows:
+    """Map the samples of a record as binary rows."""
     layout = row_type(file_type, n_analog, n_status)
-    count = length // layout.itemsize
+    count = parts.length // layout.itemsize
     if count == 0:
         return BinaryRows(np.empty(0, layout), file_type, b"")
-    rows = np.memmap(path, layout, mode="r", offset=offset, shape=(count,))
-    with path.open("rb") as file:
-        file.seek(offset + count * layout.itemsize)
-        tail = file.read(min(length - count * layout.itemsize, 4096))
+    rows = np.memmap(parts.data_path, layout, mode="r", offset=parts.offset, shape=(count,))
+    with parts.data_path.open("rb") as file:
+        file.seek(parts.offset + count * layout.itemsize)
+        tail = file.read(parts.length - count * layout.itemsize)
     return BinaryRows(rows, file_type, tail)
