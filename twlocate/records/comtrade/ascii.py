@@ -1,6 +1,6 @@
 """The ASCII DAT form: rows of comma-delimited numbers (IEEE C37.111-2013)."""
 
-from collections.abc import Iterator
+from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 from typing import BinaryIO
 
@@ -16,6 +16,7 @@ from twlocate.records.repairs import SURE, RepairLog
 
 BLOCK_BYTES = 1 << 18
 """Text is parsed in blocks of about this size, so that a block and its numbers stay in the processor's cache."""
+BLOCK_ROWS = 1 << 15
 MAX_INTEGER = 2.0**53
 FILLING = b"\x1a\r\n \t\0"
 
@@ -38,21 +39,22 @@ class AsciiRows:
         """Return the number of rows."""
         return len(self.numbers)
 
-    def stamps(self, index: slice | NDArray[np.int64]) -> NDArray[np.int64]:
-        """Return the stamps of some rows in ticks, `NO_STAMP` where blank."""
-        return self.ticks[index]
+    def stamp_blocks(self) -> Iterator[tuple[slice, NDArray[np.int64]]]:
+        """Yield all stamps in ticks in blocks, `NO_STAMP` where blank."""
+        places = (slice(start, start + BLOCK_ROWS) for start in range(0, len(self), BLOCK_ROWS))
+        return ((place, self.ticks[place]) for place in places)
+
+    def stamps_at(self, rows: Sequence[int]) -> list[int]:
+        """Return the stamps of a few rows in ticks, `NO_STAMP` where blank."""
+        return [int(self.ticks[row]) for row in rows]
 
     def sample_numbers(self) -> NDArray[np.int64]:
         """Return the sample numbers, `NO_STAMP` where blank."""
         return self.numbers
 
-    def analog(self, first: int, stop: int, _: Scaling) -> FloatArray:
-        """Return the readings of rows `first` to `stop`, shape (channels, stop - first)."""
-        return self.readings[:, first:stop]
-
-    def status(self, first: int, stop: int, _: int) -> NDArray[np.uint8]:
-        """Return the states of rows `first` to `stop`, shape (channels, stop - first)."""
-        return self.states[:, first:stop]
+    def samples(self, first: int, stop: int, _: Scaling, __: int) -> tuple[FloatArray, NDArray[np.uint8]]:
+        """Return readings and states of rows `first` to `stop`, each of shape (channels, stop - first)."""
+        return self.readings[:, first:stop], self.states[:, first:stop]
 
 
 def parse_ascii(file: BinaryIO, length: int, scaling: Scaling, n_status: int, log: RepairLog) -> AsciiRows:

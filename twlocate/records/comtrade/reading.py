@@ -72,11 +72,11 @@ def _open_rows(parts: Parts, file_type: str, scaling: Scaling, n_status: int, lo
             return parse_ascii(file, parts.length, scaling, n_status, log)
     rows = open_binary(parts, file_type, len(scaling.a), n_status)
     if len(rows) == 0:
-        raise RecordError(f"the DAT has {parts.length} bytes, less than one row of {rows.rows.dtype.itemsize}")
-    if rows.tail:
-        stray = not rows.tail.strip(FILLING)
+        raise RecordError(f"the DAT has {parts.length} bytes, less than one row of {rows.layout.itemsize}")
+    if tail := rows.tail():
+        stray = not tail.strip(FILLING)
         assumed = "stray bytes, ignored" if stray else "a row cut short, left out"
-        log.add(f"{len(rows.tail)} bytes after the last whole row", "DAT", assumed, SURE if stray else LIKELY)
+        log.add(f"{len(tail)} bytes after the last whole row", "DAT", assumed, SURE if stray else LIKELY)
     return rows
 
 
@@ -106,8 +106,9 @@ def _fitting_type(parts: Parts, configuration: Configuration, log: RepairLog) ->
 def _numbered(parts: Parts, file_type: str, n_analog: int, n_status: int) -> bool:
     """Tell whether the first sample numbers count up when the rows are laid out as `file_type` says."""
     rows = open_binary(parts, file_type, n_analog, n_status)
-    steps = np.diff(rows.rows["number"][:PROBED_ROWS].astype(np.int64))
-    return len(rows) == 1 or (len(steps) > 0 and float(np.mean(steps == 1)) >= NUMBER_SHARE)
+    blocks = rows.blocks(0, min(PROBED_ROWS, len(rows)))
+    steps = [step for _, block in blocks for step in np.diff(block["number"].astype(np.int64)).tolist()]
+    return len(rows) == 1 or (len(steps) > 0 and steps.count(1) >= NUMBER_SHARE * len(steps))
 
 
 def _check_row_count(rows: int, configuration: Configuration, log: RepairLog) -> None:
@@ -121,9 +122,11 @@ def _samples(
     rows: BinaryRows | AsciiRows, scaling: Scaling, n_status: int, ranges: list[tuple[int, int]]
 ) -> tuple[FloatArray, NDArray[np.uint8]]:
     """Return readings and states of the rows in `ranges`, shape (channels, rows)."""
-    analog = [rows.analog(first, stop, scaling) for first, stop in ranges]
-    status = [rows.status(first, stop, n_status) for first, stop in ranges]
-    return (analog[0], status[0]) if len(ranges) == 1 else (np.hstack(analog), np.hstack(status))
+    pieces = [rows.samples(first, stop, scaling, n_status) for first, stop in ranges]
+    if len(pieces) == 1:
+        return pieces[0]
+    readings, states = zip(*pieces, strict=True)
+    return np.hstack(readings), np.hstack(states)
 
 
 def _channels(lines: tuple[AnalogLine, ...], analog: FloatArray, log: RepairLog) -> tuple[Channel, ...]:

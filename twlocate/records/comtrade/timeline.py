@@ -6,7 +6,7 @@ tick. So: inside a stretch the rate spaces the samples wherever the stamps agree
 stretch starts is the stamps' word; where the two contradict each other, the stamps win and the repair says so.
 """
 
-from collections.abc import Sequence
+from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, field
 from itertools import pairwise
 from typing import Protocol
@@ -30,7 +30,6 @@ MAX_BREAKS = 0.25
 """More breaks than this share of the samples are noise of the stamps, not gaps."""
 AGREEMENT_TICKS = 1.5
 """Stamps this near to those of the rate agree with it: rounded or cut to a whole tick, by either clock."""
-BLOCK_ROWS = 1 << 15
 PROBES = 65
 """Stamps looked at, the last among them, before a window is read by the rate: a gap anywhere moves the last."""
 CONTRADICTION = "the sample stamps contradict the sampling rate"
@@ -43,8 +42,12 @@ class StampedRows(Protocol):
         """Return the number of rows."""
         ...
 
-    def stamps(self, index: slice | NDArray[np.int64]) -> NDArray[np.int64]:
-        """Return the stamps of some rows in ticks, `NO_STAMP` where missing."""
+    def stamp_blocks(self) -> Iterator[tuple[slice, NDArray[np.int64]]]:
+        """Yield all stamps in ticks in blocks with their place, `NO_STAMP` where missing."""
+        ...
+
+    def stamps_at(self, rows: Sequence[int]) -> list[int]:
+        """Return the stamps of a few rows in ticks, `NO_STAMP` where missing."""
         ...
 
     def sample_numbers(self) -> NDArray[np.int64]:
@@ -86,10 +89,10 @@ def timeline(
         Neither stamps nor rates give the samples a time.
     """
     if len(rates) == 1 and runs_evenly(rows, rates[0].rate_hz, tick_s, probe_only=probe_only):
-        first_s = float(rows.stamps(slice(0, 1))[0]) * tick_s
+        first_s = rows.stamps_at([0])[0] * tick_s
         return Timeline((Stretch(0, len(rows), 0.0, rates[0].rate_hz),), first_s)
     rates_hz = nominal_rates_hz(rates, len(rows), log)
-    ticks = usable_stamps(rows.stamps(slice(None)), rates_hz, tick_s, log)
+    ticks = usable_stamps(np.concatenate([stamps for _, stamps in rows.stamp_blocks()]), rates_hz, tick_s, log)
     if ticks is None:
         return _by_rate_alone(rows, rates_hz, log)
     first_s = float(ticks[0]) * tick_s
@@ -102,21 +105,16 @@ def timeline(
 
 def runs_evenly(rows: StampedRows, rate_hz: float, tick_s: float, *, probe_only: bool) -> bool:
     """Tell whether every stamp (or every probed one) is where the rate puts it, without a gap or a wrap."""
-    count = len(rows)
-    first = int(rows.stamps(slice(0, 1))[0])
+    count, first = len(rows), rows.stamps_at([0])[0]
     if first == NO_STAMP:
         return False
     ticks_a_sample = 1.0 / (rate_hz * tick_s)
     if probe_only:
-        index = np.unique(np.linspace(0, count - 1, PROBES).astype(np.int64))
-        return _in_line(rows.stamps(index), first + ticks_a_sample * index)
-    starts = range(0, count, BLOCK_ROWS)
-    blocks = ((rows.stamps(slice(i, i + BLOCK_ROWS)), np.arange(i, min(i + BLOCK_ROWS, count))) for i in starts)
-    return all(_in_line(stamps, first + ticks_a_sample * index) for stamps, index in blocks)
-
-
-def _in_line(stamps: NDArray[np.int64], expected: NDArray[np.floating]) -> bool:
-    return bool(np.all(np.abs(stamps - expected) <= AGREEMENT_TICKS))
+        probes = [round(part * (count - 1) / (PROBES - 1)) for part in range(PROBES)]
+        late = (stamp - first - ticks_a_sample * row for stamp, row in zip(rows.stamps_at(probes), probes, strict=True))
+        return all(abs(ticks) <= AGREEMENT_TICKS for ticks in late)
+    places = ((stamps, np.arange(place.start, place.start + len(stamps))) for place, stamps in rows.stamp_blocks())
+    return all(np.all(np.abs(s - (first + ticks_a_sample * index)) <= AGREEMENT_TICKS) for s, index in places)
 
 
 def _by_rate_alone(rows: StampedRows, rates_hz: FloatArray | None, log: RepairLog) -> Timeline:
