@@ -43,9 +43,12 @@ def scaling_of(lines: Sequence[AnalogLine], file_type: str, edition: int) -> Sca
 
 
 def scale_block(counts: NDArray[np.generic], scaling: Scaling, out: FloatArray) -> None:
-    """Write the readings of `counts` into `out`, both of shape (channels, rows)."""
-    np.multiply(counts, scaling.a, out=out, dtype=np.float64, casting="unsafe")
-    out += scaling.b
+    """Write the readings of `counts` into `out`, both of shape (channels, rows); infinite ones count as missing."""
+    with np.errstate(over="ignore", invalid="ignore"):
+        np.multiply(counts, scaling.a, out=out, dtype=np.float64, casting="unsafe")
+        out += scaling.b
     gone = counts == scaling.missing
+    if counts.dtype.kind == "f":
+        gone |= ~np.isfinite(out)
     if gone.any():
         out[gone] = np.nan

@@ -222,7 +222,7 @@ def _stamp_ratio(steps: FloatArray, steps_s: FloatArray, tick_s: float) -> float
     ratios = steps / steps_s[:-1]
     usual = float(np.median(ratios))
     near = np.abs(ratios - usual) <= max(0.5 * abs(usual), 2.5 * tick_s / float(np.median(steps_s)))
-    return float(np.mean(ratios[near]))
+    return float(np.mean(ratios[near])) if near.any() else usual
 
 
 def _misscaled(times_s: FloatArray, rates_hz: FloatArray, ratio: float, first_s: float, log: RepairLog) -> Timeline:
