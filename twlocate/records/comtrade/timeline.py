@@ -165,16 +165,22 @@ def usable_stamps(
 def _bridged(
     stamps: NDArray[np.int64], known: NDArray[np.bool_], rates_hz: FloatArray | None, tick_s: float, log: RepairLog
 ) -> NDArray[np.int64]:
-    """Return the stamps with the missing ones put where the rate, or the neighbours, say."""
+    """Return the stamps with the missing ones counted on from the last one known, by the rate.
+
+    Raises
+    ------
+    RecordError
+        There is no rate to count by.
+    """
     missing = int(np.count_nonzero(~known))
-    index = np.arange(len(stamps))
     if rates_hz is None:
-        log.add(f"{missing} stamps missing and no rate", "DAT", "spaced evenly between their neighbours", GUESS)
-        return np.rint(np.interp(index, index[known], stamps[known])).astype(np.int64)
-    log.add(f"{missing} stamps missing", "DAT", "counted on from the neighbours by the sampling rate", LIKELY)
+        raise RecordError(f"{missing} samples have no stamp and there is no sampling rate: they have no time")
+    log.add(f"{missing} stamps missing", "DAT", "counted on from the last one by the sampling rate", LIKELY)
+    first = int(np.argmax(known))
+    last_known = np.maximum(np.maximum.accumulate(np.where(known, np.arange(len(stamps)), 0)), first)
     elapsed = elapsed_s(rates_hz) / tick_s
-    lag = np.interp(index, index[known], stamps[known] - elapsed[known])
-    return np.where(known, stamps, np.rint(elapsed + lag).astype(np.int64))
+    counted = stamps[last_known] + np.rint(elapsed - elapsed[last_known]).astype(np.int64)
+    return np.where(known, stamps, counted)
 
 
 def _unwrapped(stamps: NDArray[np.int64], log: RepairLog) -> NDArray[np.int64]:
