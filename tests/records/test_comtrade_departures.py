@@ -106,6 +106,7 @@ def test_1991_writes_the_month_first(tmp_path):
         ({"analog": ("1,U,a,,kV,0.5,,0,-32767,32767,1,1,P", Written().analog[1])}, "blank offset"),
         ({"analog": ("1,U,a,,kV,0.5,1,0,,32767,1,1,P", Written().analog[1])}, "blank minimum"),
         ({"analog": ("1,U, L1,A,line,kV,0.5,1,0,-1,1,1,1,P", Written().analog[1])}, "1 fields too many"),
+        ({"analog": (Written().analog[0].replace("-32767,32767", "-9,9"), Written().analog[1])}, "samples beyond"),
         ({"status": ("1,trip",)}, "status channel of 2 fields"),
         ({"status": ("1,trip,,,",)}, "status channel of 5 fields"),
         ({"frequency": "mains"}, "line frequency 'mains'"),
@@ -187,7 +188,7 @@ def starts(record):
 def test_gaps_from_the_stamps_are_kept(tmp_path):
     record = read(Written(rows=stamped([0, 1000, 2000, 3000, 903000, 904000, 905000, 906000])).to(tmp_path))
     assert starts(record) == [(0, 4, 0.0), (4, 4, 0.903)]
-    assert whats(record) == ["1 gaps in the times"]
+    assert whats(record) == ["1 gap in the times"]
     assert record.clock.usable
 
 
@@ -203,7 +204,7 @@ def test_stamps_that_wrap_are_counted_on(tmp_path, wrap):
     record = read(Written(rows=stamped(stamps), rates=("0", "0,8")).to(tmp_path))
     assert starts(record) == [(0, 8, 0.0)]
     assert record.stretches[0].rate_hz == pytest.approx(1000.0)
-    assert f"stamps wrap 1 times at {wrap}" in whats(record)
+    assert f"stamps wrap 1 time at {wrap}" in whats(record)
 
 
 def test_steps_back_that_are_no_wrap_free_the_clock(tmp_path):

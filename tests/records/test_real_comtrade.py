@@ -66,7 +66,7 @@ EXPECTED = {
     ),
     "negative-stamps-1999-ascii.cfg": Expected(
         "1999 ASCII", 3584, 3583 / 7678.4833984375, "2012-07-11T08:44:21.051022", usable=False,
-        repairs=("first stamp is -0.041663 s",),
+        repairs=("samples beyond the stated range", "first stamp is -0.041663 s"),
     ),
     "no-rate-1999-binary.cfg": Expected(
         "1999 BINARY", 8000, 4.995215, "2021-02-17T22:27:49.159106", same_times=False
@@ -77,7 +77,8 @@ EXPECTED = {
     ),
     "segments-with-gaps-a.cfg": Expected(
         "1999 ASCII", 950, 17.291, "2012-12-24T17:30:48.384", stretches=5, usable=False, encoding="gb18030",
-        repairs=("text is not UTF-8", "last samples of the rates", "1 gaps", "times step back"), same_times=False,
+        repairs=("text is not UTF-8", "last samples of the rates", "1 gap", "times step back", "samples beyond"),
+        same_times=False,
     ),
     "segments-with-gaps-b.cfg": Expected(
         "1991 ASCII", 2131, 17.258333 + 0.0775, "2015-09-17T10:52:52.987545", stretches=6, compared=False,
@@ -207,7 +208,7 @@ def test_missing_codes_become_nan_with_a_count(tmp_path, kind):
     record = read(tmp_path / "m.cfg")
     gone = [np.flatnonzero(np.isnan(channel.samples)).tolist() for channel in record.channels]
     assert gone == [[k + (kind == "ascii")] for k in range(4)]
-    assert sum(repair.what == "1 samples missing" for repair in record.repairs) == 1
+    assert sum(repair.what == "1 sample missing" for repair in record.repairs) == 1
     assert all(channel.missing == 1 for channel in record.channels)
 
 

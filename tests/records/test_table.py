@@ -27,7 +27,7 @@ def test_rate_start_and_clock_from_comment_lines(tmp_path):
     assert [(c.name, c.unit) for c in record.channels] == [("pressure", "kPa"), ("flow", "m³/s")]
     assert record.channels[0].samples.tolist() == [1.5, 2.5]
     assert record.channel("flow").missing == 1
-    assert record.repairs[-1].what == "1 samples missing"
+    assert record.repairs[-1].what == "1 sample missing"
 
 
 @pytest.mark.parametrize(

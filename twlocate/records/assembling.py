@@ -12,7 +12,7 @@ from twlocate.quantity import parse_quantity
 from twlocate.records.moments import NUMBER, SECOND_NS, iso_moment
 from twlocate.records.record import Channel, Clock, Record, Stretch
 from twlocate.records.repairs import LIKELY, SURE, RepairLog
-from twlocate.records.spacing import stretches_by_stamps
+from twlocate.records.spacing import counted, stretches_by_stamps
 
 UNIT_NS = {"s": 10**9, "sec": 10**9, "ms": 10**6, "us": 10**3, "µs": 10**3, "μs": 10**3, "ns": 1, "min": 60 * 10**9}
 EPOCH_S = 10**8
@@ -80,7 +80,9 @@ def assemble(
         raise RecordError("there is no column of readings")
     for channel in channels:
         if channel.missing:
-            log.add(f"{channel.missing} samples missing", f"channel {channel.name!r}", "left out (NaN)", SURE)
+            log.add(
+                f"{counted(channel.missing, 'sample')} missing", f"channel {channel.name!r}", "left out (NaN)", SURE
+            )
     stretches, doubts = _stretches(times, _rate_hz(settings), channels[0].samples.size, log)
     start_ns, resolution, notes = _start(settings, times)
     return Record(
@@ -88,6 +90,13 @@ def assemble(
         start_ns=start_ns, resolution_ns=resolution, clock=_clock(settings, start_ns, notes, doubts),
         repairs=log.repairs,
     )  # fmt: skip
+
+
+def note_missing(channels: tuple[Channel, ...], log: RepairLog) -> None:
+    """Write down how many samples each channel lacks."""
+    for channel in channels:
+        if missing := channel.missing:
+            log.add(f"{counted(missing, 'sample')} missing", f"channel {channel.name!r}", "left out (NaN)", SURE)
 
 
 def _rate_hz(settings: Mapping[str, str]) -> float | None:

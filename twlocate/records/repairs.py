@@ -9,7 +9,7 @@ SURE = "sure"
 LIKELY = "likely"
 GUESS = "guess"
 
-NUMBERED_PLACE = re.compile(r"(.*) (\d+)")
+LISTED_PLACE = re.compile(r"(.*?) (\d+|'.*')")
 PLACES_SHOWN = 6
 
 
@@ -36,7 +36,7 @@ def merged(places: list[str]) -> str:
     """Return several places as one text: ``CFG line 3, 4, 5``."""
     if len(places) == 1:
         return places[0]
-    matches = [NUMBERED_PLACE.fullmatch(place) for place in places]
+    matches = [LISTED_PLACE.fullmatch(place) for place in places]
     kinds = {match[1] for match in matches if match}
     more = f" and {len(places) - PLACES_SHOWN} more" if len(places) > PLACES_SHOWN else ""
     if all(matches) and len(kinds) == 1:

@@ -75,13 +75,20 @@ def break_doubts(steps: FloatArray, breaks: NDArray[np.int64], where: str, log: 
     back = [int(index) + 1 for index in breaks if steps[index - 1] <= 0.0]
     gaps = [int(index) + 1 for index in breaks if steps[index - 1] > 0.0]
     if gaps:
-        log.add(f"{len(gaps)} gaps in the times", f"{where}, before sample {listed(gaps)}", "kept as gaps", SURE)
+        log.add(
+            f"{counted(len(gaps), 'gap')} in the times", f"{where}, before sample {listed(gaps)}", "kept as gaps", SURE
+        )
     if not back:
         return []
     log.add(
         "times step back", f"{where}, before sample {listed(back)}", "kept as stretches that overlap in time", GUESS
     )
     return [f"times step back before sample {listed(back)}: the order of events is uncertain"]
+
+
+def counted(number: int, thing: str) -> str:
+    """Return ``1 gap``, ``2 gaps``."""
+    return f"{number} {thing}" if number == 1 else f"{number} {thing}s"
 
 
 def listed(numbers: Sequence[int]) -> str:

@@ -1,5 +1,6 @@
 """A COMTRADE record from its parts."""
 
+import math
 from pathlib import Path
 
 import numpy as np
@@ -7,6 +8,7 @@ from numpy.typing import NDArray
 
 from twlocate.arrays import FloatArray
 from twlocate.errors import RecordError
+from twlocate.records.assembling import note_missing
 from twlocate.records.comtrade.ascii import FILLING, AsciiRows, parse_ascii
 from twlocate.records.comtrade.binary import ANALOG_TYPES, BinaryRows, open_binary
 from twlocate.records.comtrade.clock import stated_clock
@@ -129,25 +131,33 @@ def _samples(
     return np.hstack(readings), np.hstack(states)
 
 
-def _channels(lines: tuple[AnalogLine, ...], analog: FloatArray, log: RepairLog) -> tuple[Channel, ...]:
-    """Return the analog channels, the count of missing samples of each in the log."""
-    channels = tuple(_channel(line, samples) for line, samples in zip(lines, analog, strict=True))
-    for channel in channels:
-        if channel.missing:
-            log.add(f"{channel.missing} samples missing", f"channel {channel.name!r}", "left out (NaN)", SURE)
+def _channels(lines: tuple[AnalogLine, ...], readings: FloatArray, log: RepairLog) -> tuple[Channel, ...]:
+    """Return the analog channels; missing samples and ranges that cannot be true go to the log."""
+    channels = tuple(_channel(line, samples, log) for line, samples in zip(lines, readings, strict=True))
+    note_missing(channels, log)
     return channels
 
 
-def _channel(line: AnalogLine, samples: FloatArray) -> Channel:
-    ends = sorted((line.a * line.low + line.b, line.a * line.high + line.b))
-    known = all(np.isfinite(ends)) and ends[0] < ends[1]
-    ratio = line.primary / line.secondary if line.primary and line.secondary else None
+def _channel(line: AnalogLine, samples: FloatArray, log: RepairLog) -> Channel:
+    low, high = _converter_range(line, samples, log)
     return Channel(
         name=line.name, unit=line.unit, samples=samples, phase=line.phase, skew_s=line.skew_us * 1e-6,
-        step=abs(line.a) or None, offset=line.b,
-        low=ends[0] if known else None, high=ends[1] if known else None,
-        side={"P": "primary", "S": "secondary"}.get(line.side, ""), ratio=ratio,
+        step=abs(line.a) or None, offset=line.b, low=low, high=high,
+        side={"P": "primary", "S": "secondary"}.get(line.side, ""),
+        ratio=line.primary / line.secondary if line.primary and line.secondary else None,
     )  # fmt: skip
+
+
+def _converter_range(line: AnalogLine, samples: FloatArray, log: RepairLog) -> tuple[float | None, float | None]:
+    """Return the least and greatest reading the converter can give; None each where the stated range is not that."""
+    low, high = sorted((line.a * line.low + line.b, line.a * line.high + line.b))
+    if not (math.isfinite(low) and math.isfinite(high) and low < high):
+        return None, None
+    margin = 0.5 * abs(line.a)
+    if np.fmin.reduce(samples) < low - margin or np.fmax.reduce(samples) > high + margin:
+        log.add("samples beyond the stated range", f"channel {line.name!r}", "the range is not the converter's", LIKELY)
+        return None, None
+    return low, high
 
 
 def _status(configuration: Configuration, states: NDArray[np.uint8]) -> tuple[StatusChannel, ...]:

@@ -19,7 +19,7 @@ from twlocate.errors import RecordError
 from twlocate.records.comtrade.configuration import RateLine
 from twlocate.records.record import Stretch
 from twlocate.records.repairs import GUESS, LIKELY, SURE, RepairLog
-from twlocate.records.spacing import break_doubts, listed, stretches_by_stamps
+from twlocate.records.spacing import break_doubts, counted, listed, stretches_by_stamps
 
 NO_STAMP = np.iinfo(np.int64).min
 WRAPS = (2**16, 10**6, 2**31, 2**32, 10**9, 10**10)
@@ -175,12 +175,12 @@ def _bridged(
     missing = int(np.count_nonzero(~known))
     if rates_hz is None:
         raise RecordError(f"{missing} samples have no stamp and there is no sampling rate: they have no time")
-    log.add(f"{missing} stamps missing", "DAT", "counted on from the last one by the sampling rate", LIKELY)
+    log.add(f"{counted(missing, 'stamp')} missing", "DAT", "counted on from the last one by the sampling rate", LIKELY)
     first = int(np.argmax(known))
     last_known = np.maximum(np.maximum.accumulate(np.where(known, np.arange(len(stamps)), 0)), first)
     elapsed = elapsed_s(rates_hz) / tick_s
-    counted = stamps[last_known] + np.rint(elapsed - elapsed[last_known]).astype(np.int64)
-    return np.where(known, stamps, counted)
+    counted_on = stamps[last_known] + np.rint(elapsed - elapsed[last_known]).astype(np.int64)
+    return np.where(known, stamps, counted_on)
 
 
 def _unwrapped(stamps: NDArray[np.int64], log: RepairLog) -> NDArray[np.int64]:
@@ -191,7 +191,7 @@ def _unwrapped(stamps: NDArray[np.int64], log: RepairLog) -> NDArray[np.int64]:
     wrap = next((wrap for wrap in WRAPS if len(back) and _all_wraps(steps[back], wrap, usual)), None)
     if wrap is None:
         return stamps
-    log.add(f"stamps wrap {len(back)} times at {wrap}", "DAT", "counted on", SURE)
+    log.add(f"stamps wrap {counted(len(back), 'time')} at {wrap}", "DAT", "counted on", SURE)
     steps[back] += wrap
     unwrapped: NDArray[np.int64] = np.cumsum(np.concatenate([stamps[:1], steps]))
     return unwrapped
