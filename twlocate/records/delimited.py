@@ -1,6 +1,7 @@
 """Delimited numbers, fast where the text is regular and forgiving where it is not."""
 
 import warnings
+from collections.abc import Sequence
 
 import numpy as np
 from numpy.typing import NDArray
@@ -34,18 +35,30 @@ def _parsed(flat: bytes, dtype: type[np.number]) -> NDArray[np.number] | None:
         return None
 
 
-def forgiving_numbers(lines: list[str], columns: int, delimiter: str | None = ",") -> tuple[FloatArray, list[int]]:
-    """Return rows of `columns` numbers, NaN where a field is blank or no number, and which lines had too few fields.
+def forgiving_numbers(
+    lines: Sequence[str], columns: int, delimiter: str | None = ","
+) -> tuple[FloatArray, NDArray[np.bool_]]:
+    """Return rows of `columns` numbers, and which lines had too few fields.
 
-    Lines with too few fields are left out; surplus fields are ignored.
+    Parameters
+    ----------
+    lines
+        One a row; surplus fields are passed over.
+    columns
+        Number of fields wanted.
+    delimiter
+        Between fields; None for white space.
+
+    Returns
+    -------
+    numbers
+        Shape (lines, columns), NaN where a field is absent, blank or no number.
+    short
+        Shape (lines,).
     """
-    rows, short = [], []
-    for index, line in enumerate(lines):
-        fields = line.split(delimiter)
-        if len(fields) < columns:
-            short.append(index)
-            continue
-        rows.append([_number(field) for field in fields[:columns]])
+    fields = [line.split(delimiter, columns) for line in lines]
+    rows = [[_number(field) for field in row[:columns]] + [np.nan] * (columns - len(row)) for row in fields]
+    short = np.array([len(row) < columns for row in fields], dtype=np.bool_)
     return np.array(rows, dtype=np.float64).reshape(-1, columns), short
 
 

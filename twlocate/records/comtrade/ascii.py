@@ -108,9 +108,9 @@ def _block(text: bytes, columns: int, log: RepairLog) -> NDArray[np.number]:
         return numbers  # numbered one after another: no field slipped from row to row
     lines = [line for line in body.decode("latin-1").splitlines() if line.strip()]
     rows, short = forgiving_numbers(lines, columns)
-    if short:
+    if short.any():
         log.add("rows with too few fields", "DAT", "left out", SURE)
-    return rows
+    return rows[~short]
 
 
 def as_integers(column: NDArray[np.number]) -> NDArray[np.int64]:
