@@ -10,7 +10,7 @@ import numpy as np
 
 from twlocate.arrays import FloatArray
 from twlocate.errors import RecordError
-from twlocate.records.assembling import assemble
+from twlocate.records.assembling import as_readings, assemble
 from twlocate.records.extras import needed
 from twlocate.records.moments import SECOND_NS, iso_moment
 from twlocate.records.record import Channel, Record, Stretch
@@ -77,7 +77,7 @@ def _channel(number: int, samples: FloatArray, subtype: str) -> Channel:
     bits = BITS.get(subtype)
     step = None if bits is None else 2.0 ** (1 - bits)
     limits = (None, None) if step is None else (-1.0, 1.0 - step)
-    return Channel(f"channel {number}", "", np.ascontiguousarray(samples), step=step, low=limits[0], high=limits[1])
+    return Channel(f"channel {number}", "", as_readings(samples), step=step, low=limits[0], high=limits[1])
 
 
 def broadcast_start(path: Path, rate_hz: int, log: RepairLog) -> dict[str, str]:

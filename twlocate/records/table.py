@@ -8,7 +8,7 @@ import numpy as np
 
 from twlocate.arrays import FloatArray
 from twlocate.errors import RecordError
-from twlocate.records.assembling import assemble
+from twlocate.records.assembling import as_readings, assemble
 from twlocate.records.delimited import forgiving_numbers
 from twlocate.records.moments import ISO_8601, NUMBER
 from twlocate.records.record import Channel, Record
@@ -24,7 +24,9 @@ SETTING = re.compile(r"#+\s*([A-Za-z][\w ]*?)\s*[:=]\s*(.*\S)\s*")
 COLUMN = re.compile(r"(.*?)\s*[\[(]([^\[\]()]*)[\])]\s*")
 SPACED_TITLE = re.compile(r"\S+(?:\s*[\[(][^\[\]()]*[\])])?")
 TIME_NAME = re.compile(r"(t|time|timestamp|date|datetime|date time|utc|elapsed)(\s.*)?", re.IGNORECASE)
+TIME_FIELD = re.compile(rf"{ISO_8601.pattern}|\d\d:\d\d(:\d\d(\.\d+)?)?")
 BLANK = ("", "nan", "NaN", "NAN", "null", "-", "—", "N/A")
+MOST = 0.7
 DELIMITERS = ("\t", ";", ",", "|")
 
 
@@ -98,11 +100,10 @@ def _titles(line: str, delimiter: str | None, width: int) -> list[str]:
 
 
 def _delimiter(body: list[str]) -> str | None:
-    """Return the delimiter that the last lines use; None for white space."""
+    """Return the delimiter that most of the last lines use; None for white space."""
     tail = body[-20:]
-    counts = {delimiter: [line.count(delimiter) for line in tail] for delimiter in DELIMITERS}
-    steady = [delimiter for delimiter in DELIMITERS if counts[delimiter] and min(counts[delimiter]) > 0]
-    return steady[0] if steady else None
+    uses = {delimiter: sum(delimiter in line for line in tail) for delimiter in DELIMITERS}
+    return next((delimiter for delimiter in DELIMITERS if uses[delimiter] >= MOST * len(tail) > 0), None)
 
 
 def _has_decimal_comma(body: list[str], delimiter: str | None) -> bool:
@@ -115,7 +116,7 @@ def _has_decimal_comma(body: list[str], delimiter: str | None) -> bool:
 def _is_data(fields: list[str]) -> bool:
     numeric = [bool(NUMBER.fullmatch(field)) for field in fields]
     others = [field for field, number in zip(fields, numeric, strict=True) if not number]
-    return any(numeric) and all(field in BLANK or ISO_8601.fullmatch(field) for field in others)
+    return any(numeric) and all(field in BLANK or TIME_FIELD.fullmatch(field) for field in others)
 
 
 def _header(lines: list[list[str]], width: int) -> tuple[list[str], list[str]]:
@@ -185,4 +186,4 @@ def _time_text(fields: list[str], columns: list[int]) -> str:
 def _channels(layout: Layout, numbers: FloatArray, time_columns: list[int]) -> tuple[Channel, ...]:
     chosen = [index for index in range(len(layout.names)) if index not in time_columns]
     columns = ((layout.names[index], layout.units[index], numbers[:, index]) for index in chosen)
-    return tuple(Channel(name, unit, np.ascontiguousarray(column)) for name, unit, column in columns)
+    return tuple(Channel(name, unit, as_readings(column)) for name, unit, column in columns)
