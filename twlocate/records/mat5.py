@@ -60,9 +60,9 @@ def _top(element: Element, order: str) -> Iterator[tuple[str, Value]]:
         except zlib.error as error:
             raise RecordError(f"a compressed variable is damaged ({error})") from None
         for inner in _elements(unpacked, order):
-            yield from _matrix(inner, order, "", 0)
+            yield from _matrix(inner, order)
     else:
-        yield from _matrix(element, order, "", 0)
+        yield from _matrix(element, order)
 
 
 def _elements(content: bytes, order: str) -> Iterator[Element]:
@@ -88,7 +88,7 @@ def _elements(content: bytes, order: str) -> Iterator[Element]:
         at += size if kind == MI_COMPRESSED else size + -size % 8
 
 
-def _matrix(element: Element, order: str, prefix: str, depth: int) -> Iterator[tuple[str, Value]]:
+def _matrix(element: Element, order: str, depth: int = 0) -> Iterator[tuple[str, Value]]:
     """Yield what one array holds: itself, or the fields of a structure of one element."""
     if element.kind != MI_MATRIX or not element.content or depth > MAX_DEPTH:
         return
@@ -97,7 +97,7 @@ def _matrix(element: Element, order: str, prefix: str, depth: int) -> Iterator[t
     if len(flags.content) < 4:
         raise RecordError("an array without its flags: the file is damaged")
     word = struct.unpack_from(order + "I", flags.content)[0]
-    kind, name = word & 0xFF, prefix + name_part.content.decode("ascii", "replace").rstrip("\0")
+    kind, name = word & 0xFF, name_part.content.decode("ascii", "replace").rstrip("\0")
     if kind == MX_STRUCT:
         yield from _fields(parts, order, name, depth)
         return
@@ -141,5 +141,5 @@ def _fields(parts: Iterator[Element], order: str, name: str, depth: int) -> Iter
     starts = range(0, len(names_part.content) - length + 1, length)
     names = [names_part.content[i : i + length].split(b"\0")[0].decode("ascii", "replace") for i in starts]
     for field, element in zip(names, parts, strict=False):
-        for _, value in _matrix(element, order, "", depth + 1):
-            yield f"{name}.{field}", value
+        for inner, value in _matrix(element, order, depth + 1):  # arrays in a structure have no name of their own
+            yield f"{name}.{field}{inner}", value
