@@ -9,6 +9,7 @@ ROOMS = [
     "errors",
     "arrays",
     "quantity",
+    "scales",
     "records",
     "waves",
     "media",

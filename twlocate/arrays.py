@@ -19,5 +19,7 @@ def as_signal(values: ArrayLike, name: str) -> FloatArray:
         raise ValueError(f"{name} has shape {signal.shape}; one row of samples is needed")
     if not np.isfinite(signal).all():
         bad = int(np.count_nonzero(~np.isfinite(signal)))
-        raise ValueError(f"{name} has {bad} missing or infinite samples of {signal.size}; cut to a stretch without them")
+        raise ValueError(
+            f"{name} has {bad} missing or infinite samples of {signal.size}; cut to a stretch without them"
+        )
     return signal

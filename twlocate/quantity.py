@@ -1,6 +1,7 @@
 """Values with a standard uncertainty, in SI, read from text such as ``118.4 km ± 60 m``."""
 
 import functools
+import math
 import re
 from dataclasses import dataclass
 from typing import Any
@@ -45,7 +46,9 @@ def parse_quantity(text: str, unit: str) -> Quantity:
     value = _in_unit(value_text, unit, text) if value_text.strip() else 0.0
     u = _uncertainty(u_texts[0], value, unit, text)
     if u < 0:
-        raise ValueError(f"{text!r} has a negative uncertainty; the figure behind ± is a standard uncertainty, 0 or more")
+        raise ValueError(
+            f"{text!r} has a negative uncertainty; the figure behind ± is a standard uncertainty, 0 or more"
+        )
     return Quantity(value, u)
 
 
@@ -80,7 +83,10 @@ def _in_unit(text: str, unit: str, whole: str, *, delta: bool = False) -> float:
         raise ValueError(f"{whole!r} is not a number with a unit; write it like '118.4 km ± 60 m'")
     if not term["unit"] and unit:
         raise ValueError(f"{whole!r} has no unit; a unit of the kind '{unit}' is needed")
-    return _convert(float(term["number"]), term["unit"], unit, whole, delta=delta)
+    number = float(term["number"])
+    if not math.isfinite(number):
+        raise ValueError(f"{whole!r} is not a finite number")
+    return _convert(number, term["unit"], unit, whole, delta=delta)
 
 
 def _convert(number: float, unit: str, target: str, whole: str, *, delta: bool) -> float:

@@ -1,8 +1,12 @@
 """The facts about a trace and about one wave front that arrived in it."""
 
 from dataclasses import dataclass
+from typing import TYPE_CHECKING
 
 from twlocate.arrays import FloatArray
+
+if TYPE_CHECKING:
+    from twlocate.arrivals.refine import Front
 
 
 @dataclass(frozen=True)
@@ -40,3 +44,30 @@ class Arrival:
     """Fitted rise time of the front."""
     shape: str = ""
     """The front model that fits best."""
+
+
+@dataclass(frozen=True)
+class Gate:
+    """A quality check carried to the result."""
+
+    name: str
+    passed: bool
+    detail: str
+    """What was seen, in a plain sentence with figures."""
+    fatal: bool = False
+    """Whether no position can be given when it does not pass."""
+
+
+@dataclass(frozen=True)
+class Picks:
+    """What was found in a trace."""
+
+    trace: Trace
+    denoised: FloatArray
+    noise: float
+    """Standard deviation of the noise before the event, in the trace's unit."""
+    arrivals: tuple[Arrival, ...]
+    """In time order."""
+    gates: tuple[Gate, ...]
+    fronts: tuple["Front", ...] = ()
+    """The fitted front behind each arrival."""

@@ -2,6 +2,7 @@
 
 import math
 from collections.abc import Callable
+from dataclasses import replace
 from pathlib import Path
 
 from twlocate.errors import RecordError
@@ -66,10 +67,11 @@ def read(path: str | Path, span: Span | None = None) -> Record:
         known = " ".join(sorted(READERS))
         raise RecordError(f"{path}: {path.suffix or 'a name without ending'} is no known format; known are {known}")
     try:
-        return reader(path, span)
+        record = reader(path, span)
     except RecordError as error:
         raise RecordError(f"{path}: {error}") from None
     except MemoryError:
         raise RecordError(f"{path}: too large for this machine's memory; read a span of it") from None
     except OSError as error:
         raise RecordError(f"{path}: cannot be read ({error.strerror or error})") from None
+    return record if record.files else replace(record, files=(path,))

@@ -130,6 +130,8 @@ class Record:
     status: tuple[StatusChannel, ...] = ()
     clock: Clock = field(default_factory=Clock)
     repairs: tuple[Repair, ...] = ()
+    files: tuple[Path, ...] = ()
+    """Every file the record was read from."""
 
     @property
     def n_samples(self) -> int:

@@ -21,6 +21,7 @@ COMPANIONS = (".hdr", ".inf")
 class Parts:
     """The CFG text as bytes, and where in which file the samples are."""
 
+    cfg_path: Path
     cfg: bytes
     data_path: Path
     offset: int
@@ -41,7 +42,7 @@ def find_parts(path: Path, log: RepairLog) -> Parts:
         return _cff_parts(path, log)
     cfg_path = _sibling(path, ".cfg")
     data_path = _sibling(path, ".dat")
-    return Parts(cfg_path.read_bytes(), data_path, 0, data_path.stat().st_size)
+    return Parts(cfg_path, cfg_path.read_bytes(), data_path, 0, data_path.stat().st_size)
 
 
 def _sibling(path: Path, suffix: str) -> Path:
@@ -71,7 +72,7 @@ def _cff_parts(path: Path, log: RepairLog) -> Parts:
     stated = int(data[3]) if data[3] else length
     if stated != length:
         log.add(f"DAT section of {length} bytes, {stated} stated", "CFF", "what is there is read", LIKELY)
-    return Parts(head[cfg.end() : end], path, data.end(), min(length, stated), (data[2] or b"").decode().upper())
+    return Parts(path, head[cfg.end() : end], path, data.end(), min(length, stated), (data[2] or b"").decode().upper())
 
 
 def _head_to_data(path: Path) -> bytes:

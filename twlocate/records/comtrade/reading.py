@@ -64,6 +64,7 @@ def read_comtrade(path: Path, span: tuple[float, float] | None) -> Record:
         status=_status(configuration, status),
         clock=_clock(configuration, times, log),
         repairs=log.repairs,
+        files=tuple(dict.fromkeys((parts.cfg_path, parts.data_path))),
     )
 
 

@@ -1,0 +1,153 @@
+"""The case file: read in SI, and every fault listed at once with its place."""
+
+import re
+
+import pytest
+
+from twlocate.case import load_case
+from twlocate.errors import CaseError
+
+GOOD = """\
+title = "Two sections (invented)"
+kind = "line"
+
+[[section]]
+from = "A"
+to = "J"
+length = "62.31 km ± 40 m"
+speed = "294.6 m/µs ± 0.5 m/µs"
+impedance = "385 ohm"
+
+[[section]]
+from = "J"
+to = "B"
+length = "8 km"
+speed = "0.57 c"
+
+[[terminal]]
+node = "A"
+recording = "a.csv"
+channels = { v = "U" }
+clock = "± 0.1 µs"
+delay = "0.9 µs ± 0.05 µs"
+
+[[terminal]]
+node = "B"
+recording = "b.csv"
+channels = { v = "U" }
+clock = "free"
+"""
+
+PLACES = "name,section,chainage,lat,lon\nT1,A-J,340 m,54.1,-2.2\nT2,J–B,1.5 km,,\n"
+
+
+@pytest.fixture
+def folder(tmp_path):
+    for name in ("a.csv", "b.csv"):
+        (tmp_path / name).write_text("U [V]\n1\n")
+    (tmp_path / "places.csv").write_text(PLACES, encoding="utf-8")
+    return tmp_path
+
+
+def load(folder, text):
+    path = folder / "case.toml"
+    path.write_text(text, encoding="utf-8")
+    return load_case(path)
+
+
+def faults(folder, text):
+    with pytest.raises(CaseError) as error:
+        load(folder, text)
+    head, *rows = str(error.value).split("\n  ")
+    assert re.search(r"case.toml: \d+ faults? in the case file", head)
+    return rows
+
+
+def test_reads_everything_in_si(folder):
+    case = load(folder, GOOD + '\n[places]\nfile = "places.csv"\n')
+    first, second = case.route.sections
+    assert (first.name, first.length.value, first.length.u) == ("A–J", 62_310.0, 40.0)
+    assert first.speed.value == pytest.approx(294.6e6)
+    assert first.impedance == 385.0
+    assert second.speed.value == pytest.approx(0.57 * 299_792_458)
+    a, b = case.terminals
+    assert (a.clock.u, a.delay.value, a.clock_free) == (pytest.approx(1e-7), pytest.approx(0.9e-6), False)
+    assert (b.clock, b.clock_free, b.launches) == (None, True, None)
+    assert a.recording == folder / "a.csv"
+    assert [(p.name, p.section, p.distance_m) for p in case.places] == [("T1", 0, 340.0), ("T2", 1, 1500.0)]
+    assert (case.places[0].lat, case.places[1].lat) == (54.1, None)
+
+
+def test_lists_all_faults_at_once(folder):
+    text = (
+        GOOD.replace('length = "8 km"', 'length = "-8 km"')
+        .replace('length = "62.31 km ± 40 m"', 'lenght = "62.31 km"')
+        .replace('speed = "0.57 c"', 'speed = "0.57 kg"')
+        .replace('recording = "b.csv"', 'recording = "gone.csv"')
+        .replace('node = "A"', 'node = "Z"')
+    )
+    rows = faults(folder, text)
+    for words in (
+        "section 1, length: missing",
+        "section 1, lenght: unknown key; did you mean 'length'?",
+        "section 2, length: -8000 (SI) is not positive",
+        "section 2, speed: '0.57 kg' cannot be read in 'm/s'",
+        "terminal 2, recording: no file 'gone.csv'",
+        "terminal 1, node: 'Z' is not a node of any section; nodes are A, B, J",
+    ):
+        assert any(row.startswith(words) for row in rows), (words, rows)
+    assert len(rows) == 6
+
+
+@pytest.mark.parametrize(
+    ("old", "new", "words"),
+    [
+        ('kind = "line"', 'kind = "tube"', "kind: Input should be 'line' or 'pipe'"),
+        ('length = "8 km"', "length = 8", "section 2, length: 8 is not text; write a number with its unit in quotes"),
+        ('length = "8 km"', 'length = "8"', "section 2, length: '8' has no unit"),
+        ('speed = "0.57 c"', 'speed = "1.2 c"', "section 2, speed: 3.59751e\\+08 m/s is above the speed of light"),
+        ('speed = "0.57 c"', 'speed = "0.57 c"\nflow_speed = "1 m/s"', "section 2, flow_speed: only a pipe has a flow"),
+        ('impedance = "385 ohm"', 'impedance = "385 bar"', "section 1, impedance: '385 bar' cannot be read in 'ohm'"),
+        ('node = "B"', 'node = "A"', "terminal 2, node: 'A' has a terminal already"),
+        ('clock = "free"', 'clock = "good"', "terminal 2, clock: 'good' is not a number with a unit"),
+        ('channels = { v = "U" }', 'channels = { p = "U" }', "terminal 1, channels: 'p' is not a role on a line"),
+        ('channels = { v = "U" }', 'channels = { va = "U" }', "terminal 1, channels: va without vb, vc"),
+        ('to = "B"', 'to = "A"', "section 2: J–A closes a loop"),
+        ('from = "J"\nto = "B"', 'from = "K"\nto = "B"', "section: the sections do not join up"),
+        ("title", "titel", "titel: unknown key; did you mean 'title'\\?"),
+    ],
+)
+def test_says_where_and_what(folder, old, new, words):
+    assert re.search(words, "\n".join(faults(folder, GOOD.replace(old, new))))
+
+
+@pytest.mark.parametrize(
+    ("row", "words"),
+    [
+        ("T3,A-Q,1 km,,", "line 4: no section 'A-Q'; sections are A-J, J-B"),
+        ("T3,A-J,99 km,,", "line 4: chainage 99 km is not on the section, which is 62310 m long"),
+        ("T3,A-J,,,", "line 4: no chainage"),
+        ("T3,A-J,1 km,north,2", "line 4: could not convert string to float: 'north'"),
+    ],
+)
+def test_faults_of_the_places_file(folder, row, words):
+    (folder / "places.csv").write_text(PLACES + row + "\n", encoding="utf-8")
+    assert words in "\n".join(faults(folder, GOOD + '\n[places]\nfile = "places.csv"\n'))
+
+
+def test_a_file_that_is_no_case(folder):
+    with pytest.raises(CaseError, match="No such file or directory; give the path of a case file"):
+        load_case(folder / "none.toml")
+    with pytest.raises(CaseError, match=r"not TOML: .*line 1"):
+        load(folder, "title = = 3")
+    (folder / "case.toml").write_bytes(b'title = "\xff\xfe"')
+    with pytest.raises(CaseError, match="not UTF-8 text at byte 9"):
+        load_case(folder / "case.toml")
+    with pytest.raises(CaseError, match="Is a directory"):
+        load_case(folder)
+
+
+def test_pipe_needs_flow_below_the_wave_speed(folder):
+    text = GOOD.replace('"line"', '"pipe"').replace('{ v = "U" }', '{ p = "U" }').replace('impedance = "385 ohm"\n', "")
+    text = text.replace('speed = "0.57 c"', 'speed = "1000 m/s"\nflow_speed = "-1200 m/s"')
+    assert "section 2, flow_speed: -1200 m/s is not below the wave speed" in faults(folder, text)

@@ -1,0 +1,29 @@
+"""Start-up is a feature: help loads no numeric library, and the main path loads none that it does not need."""
+
+import json
+import subprocess
+import sys
+
+HEAVY = ["numpy", "scipy", "pywt", "matplotlib", "pydantic", "pint", "rich"]
+
+
+def loaded_by(*arguments: str) -> set[str]:
+    """Run the command line in a fresh interpreter; return which of the top-level packages it loaded."""
+    script = (
+        "import sys, json\n"
+        "from twlocate.__main__ import main\n"
+        f"try: main({list(arguments)!r})\n"
+        "except SystemExit: pass\n"
+        "sys.stderr.write('\\n' + json.dumps(sorted({name.partition('.')[0] for name in sys.modules})))"
+    )
+    run = subprocess.run([sys.executable, "-c", script], capture_output=True, text=True, check=True)
+    return set(json.loads(run.stderr.splitlines()[-1]))
+
+
+def test_help_loads_no_numeric_library():
+    assert not loaded_by("--help") & set(HEAVY)
+
+
+def test_help_of_each_command_loads_no_numeric_library():
+    for command in ("locate", "inspect"):
+        assert not loaded_by(command, "--help") & set(HEAVY)

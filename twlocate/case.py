@@ -1,0 +1,344 @@
+"""The case file: what the route is, where the recordings are, how far the clocks may be trusted (README)."""
+
+import csv
+import difflib
+import tomllib
+from collections.abc import Iterator, Mapping
+from dataclasses import dataclass
+from pathlib import Path
+from typing import Annotated, Any, Literal
+
+from pydantic import AfterValidator, BaseModel, BeforeValidator, ConfigDict, Field, ValidationError
+
+from twlocate.errors import CaseError
+from twlocate.quantity import Quantity, parse_quantity
+from twlocate.routes import Place, Route, Section
+
+SPEED_OF_LIGHT = 299_792_458.0  # m/s, exact: SI definition of the metre
+
+ROLES = {
+    "line": ("va", "vb", "vc", "ia", "ib", "ic", "v", "i"),
+    "pipe": ("p", "q"),
+}
+"""What a channel can be, by kind of route: phase voltages and currents, one voltage or current; pressure, flow."""
+
+IMPEDANCE_UNIT = {"line": "ohm", "pipe": "Pa*s/m**3"}
+
+
+@dataclass(frozen=True)
+class Terminal:
+    """A node with a recorder."""
+
+    node: str
+    recording: Path
+    channels: Mapping[str, str]
+    """Role (see :data:`ROLES`) to the channel's name in the recording."""
+    clock: Quantity | None
+    """Offset and standard uncertainty of its clock, s; None: take what the recording says."""
+    clock_free: bool
+    delay: Quantity
+    """Transducer and secondary cabling, s."""
+    launches: str | None
+    """``pulse`` or ``step`` where the terminal sends its own signal into the route; None where it only listens."""
+
+
+@dataclass(frozen=True)
+class Case:
+    """A case file, checked and in SI."""
+
+    path: Path
+    title: str
+    kind: str
+    route: Route
+    terminals: tuple[Terminal, ...]
+    places: tuple[Place, ...]
+    places_file: Path | None
+
+
+def load_case(path: Path) -> Case:
+    """Read a case file.
+
+    Raises
+    ------
+    CaseError
+        The file is missing, is not TOML, or has faults; the message lists every fault with its place.
+    """
+    tables = _read_toml(path)
+    faults = [*_name_faults(tables, path.parent)]
+    try:
+        form = _CaseForm.model_validate(tables)
+    except ValidationError as error:
+        raise _case_error(path, [*_form_faults(error), *faults]) from error
+    faults = faults or [*_value_faults(form)]
+    if faults:
+        raise _case_error(path, faults)
+    route = _route(form)
+    places_file = path.parent / form.places.file if form.places else None
+    places, faults = _read_places(places_file, route) if places_file else ((), [])
+    if faults:
+        raise _case_error(path, faults)
+    terminals = tuple(_terminal(table, path.parent) for table in form.terminal)
+    return Case(path, form.title, form.kind, route, terminals, places, places_file)
+
+
+def _case_error(path: Path, faults: list[str]) -> CaseError:
+    count = f"{len(faults)} faults" if len(faults) > 1 else "1 fault"
+    return CaseError("\n  ".join([f"{path}: {count} in the case file", *faults]))
+
+
+def _read_toml(path: Path) -> dict[str, Any]:
+    try:
+        return tomllib.loads(path.read_text(encoding="utf-8"))
+    except OSError as error:
+        raise CaseError(f"{path}: {error.strerror or error}; give the path of a case file") from error
+    except UnicodeDecodeError as error:
+        raise CaseError(f"{path}: not UTF-8 text at byte {error.start}; a case file is a TOML text file") from error
+    except tomllib.TOMLDecodeError as error:
+        raise CaseError(f"{path}: not TOML: {error}") from error
+
+
+# ---------------------------------------------------------------- the form: one field at a time
+
+
+def _quantity_in(unit: str) -> Any:
+    def read(text: object) -> Quantity:
+        if not isinstance(text, str):
+            raise ValueError(f"{text!r} is not text; write a number with its unit in quotes, like '12.5 {unit}'")
+        return parse_quantity(text, unit)
+
+    return BeforeValidator(read)
+
+
+def _positive(quantity: Quantity) -> Quantity:
+    if quantity.value <= 0:
+        raise ValueError(f"{quantity.value:g} (SI) is not positive")
+    return quantity
+
+
+Length = Annotated[Quantity, AfterValidator(_positive), _quantity_in("m")]
+Speed = Annotated[Quantity, AfterValidator(_positive), _quantity_in("m/s")]
+Flow = Annotated[Quantity, _quantity_in("m/s")]
+Duration = Annotated[Quantity, _quantity_in("s")]
+
+
+def _clock(text: object) -> object:
+    return text if text == "free" else _quantity_in("s").func(text)
+
+
+class _Form(BaseModel):
+    model_config = ConfigDict(extra="forbid", frozen=True, arbitrary_types_allowed=True)
+
+
+class _SectionForm(_Form):
+    from_node: str = Field(alias="from", min_length=1)
+    to_node: str = Field(alias="to", min_length=1)
+    length: Length
+    speed: Speed
+    impedance: str | None = None
+    flow_speed: Flow = Quantity(0.0)
+
+
+class _TerminalForm(_Form):
+    node: str
+    recording: str
+    channels: dict[str, str] = Field(min_length=1)
+    clock: Annotated[Quantity | Literal["free"] | None, BeforeValidator(_clock)] = None
+    delay: Duration = Quantity(0.0)
+    launches: Literal["pulse", "step"] | None = None
+
+
+class _PlacesForm(_Form):
+    file: str
+
+
+class _CaseForm(_Form):
+    title: str = ""
+    kind: Literal["line", "pipe"]
+    section: list[_SectionForm] = Field(min_length=1)
+    terminal: list[_TerminalForm] = Field(min_length=1)
+    places: _PlacesForm | None = None
+
+
+def _form_faults(error: ValidationError) -> Iterator[str]:
+    for fault in error.errors():
+        place = _place(fault["loc"])
+        if fault["type"] == "extra_forbidden":
+            yield f"{place}: unknown key{_suggestion(fault['loc'])}"
+        elif fault["type"] == "missing":
+            yield f"{place}: missing; every {_owner(fault['loc'])} needs it"
+        else:
+            yield f"{place}: {fault['msg'].removeprefix('Value error, ')}"
+
+
+def _place(loc: tuple[int | str, ...]) -> str:
+    """Turn ("section", 0, "length") into "section 1, length" (counted as in the file, from one)."""
+    words: list[str] = []
+    for part in loc:
+        if isinstance(part, int):
+            words[-1] += f" {part + 1}"
+        else:
+            words.append(part)
+    return ", ".join(words)
+
+
+_FORMS: dict[str, type[_Form]] = {"section": _SectionForm, "terminal": _TerminalForm, "places": _PlacesForm}
+
+
+def _owner(loc: tuple[int | str, ...]) -> str:
+    return str(loc[0]) if len(loc) > 1 else "case"
+
+
+def _suggestion(loc: tuple[int | str, ...]) -> str:
+    form = _FORMS.get(str(loc[0]), _CaseForm) if len(loc) > 1 else _CaseForm
+    keys = [field.alias or name for name, field in form.model_fields.items()]
+    near = difflib.get_close_matches(str(loc[-1]), keys, n=1)
+    return f"; did you mean {near[0]!r}?" if near else f"; known keys are {', '.join(keys)}"
+
+
+# ---------------------------------------------------------------- faults between fields
+
+
+def _name_faults(tables: dict[str, Any], folder: Path) -> Iterator[str]:
+    """Faults that names alone show; looks at the raw tables, so that they are listed beside faults of form."""
+    sections = _tables(tables, "section")
+    ends = [(table.get("from"), table.get("to")) for table in sections]
+    nodes = {node for pair in ends for node in pair if isinstance(node, str)}
+    yield from _shape_faults(ends)
+    seen: set[object] = set()
+    for index, table in enumerate(_tables(tables, "terminal"), 1):
+        node = table.get("node")
+        if isinstance(node, str) and nodes and node not in nodes:
+            yield f"terminal {index}, node: {node!r} is not a node of any section; nodes are {', '.join(sorted(nodes))}"
+        if isinstance(node, str) and node in seen:
+            yield f"terminal {index}, node: {node!r} has a terminal already; give each node one recorder"
+        seen.add(node)
+        yield from _file_faults(table.get("recording"), folder, f"terminal {index}, recording")
+        yield from _role_faults(table.get("channels"), tables.get("kind"), index)
+    places = tables.get("places")
+    if isinstance(places, dict):
+        yield from _file_faults(places.get("file"), folder, "places, file")
+
+
+def _tables(tables: dict[str, Any], key: str) -> list[dict[str, Any]]:
+    rows = tables.get(key)
+    return [row for row in rows if isinstance(row, dict)] if isinstance(rows, list) else []
+
+
+def _shape_faults(ends: list[tuple[object, object]]) -> Iterator[str]:
+    """A route is a tree: each section must bring exactly one new node to what the earlier ones reach."""
+    group: dict[object, object] = {}
+
+    def root(node: object) -> object:
+        while group.setdefault(node, node) != node:
+            node = group[node]
+        return node
+
+    for index, (start, end) in enumerate(ends, 1):
+        if not (isinstance(start, str) and isinstance(end, str)):
+            continue
+        if root(start) == root(end):
+            yield f"section {index}: {start}–{end} closes a loop; a route is in series or a tree"
+        group[root(end)] = root(start)
+    if len({root(node) for node in list(group)}) > 1:
+        yield "section: the sections do not join up; each one must share a node with another"
+
+
+def _file_faults(name: object, folder: Path, place: str) -> Iterator[str]:
+    if isinstance(name, str) and not (folder / name).is_file():
+        yield f"{place}: no file {name!r} beside the case file (looked in {folder.resolve()})"
+
+
+def _role_faults(channels: object, kind: object, index: int) -> Iterator[str]:
+    roles = ROLES.get(kind) if isinstance(kind, str) else None
+    if roles is None or not isinstance(channels, dict):
+        return
+    for role in channels:
+        if role not in roles:
+            yield f"terminal {index}, channels: {role!r} is not a role on a {kind}; roles are {', '.join(roles)}"
+    for phases in (("va", "vb", "vc"), ("ia", "ib", "ic")):
+        given = [role for role in phases if role in channels]
+        if given and len(given) < len(phases):
+            lacking = ", ".join(role for role in phases if role not in given)
+            yield f"terminal {index}, channels: {', '.join(given)} without {lacking}; give all three phases, or v or i"
+
+
+def _value_faults(form: _CaseForm) -> Iterator[str]:
+    for index, section in enumerate(form.section, 1):
+        if form.kind == "line" and section.speed.value > SPEED_OF_LIGHT:
+            yield f"section {index}, speed: {section.speed.value:g} m/s is above the speed of light; check the unit"
+        if form.kind == "line" and section.flow_speed != Quantity(0.0):
+            yield f"section {index}, flow_speed: only a pipe has a flow; leave it out on a line"
+        if abs(section.flow_speed.value) >= section.speed.value:
+            yield f"section {index}, flow_speed: {section.flow_speed.value:g} m/s is not below the wave speed"
+        if section.impedance is not None:
+            yield from _impedance_faults(section.impedance, form.kind, index)
+
+
+def _impedance_faults(text: str, kind: str, index: int) -> Iterator[str]:
+    try:
+        _positive(parse_quantity(text, IMPEDANCE_UNIT[kind]))
+    except ValueError as error:
+        yield f"section {index}, impedance: {error}"
+
+
+# ---------------------------------------------------------------- from the form to the facts
+
+
+def _route(form: _CaseForm) -> Route:
+    def impedance(text: str | None) -> float | None:
+        return None if text is None else parse_quantity(text, IMPEDANCE_UNIT[form.kind]).value
+
+    return Route(
+        tuple(
+            Section(s.from_node, s.to_node, s.length, s.speed, s.flow_speed, impedance(s.impedance))
+            for s in form.section
+        )
+    )
+
+
+def _terminal(table: _TerminalForm, folder: Path) -> Terminal:
+    free = table.clock == "free"
+    return Terminal(
+        node=table.node,
+        recording=folder / table.recording,
+        channels=dict(table.channels),
+        clock=table.clock if isinstance(table.clock, Quantity) else None,
+        clock_free=free,
+        delay=table.delay,
+        launches=table.launches,
+    )
+
+
+def _read_places(path: Path, route: Route) -> tuple[tuple[Place, ...], list[str]]:
+    places: list[Place] = []
+    faults: list[str] = []
+    names = {_plain(section.name): index for index, section in enumerate(route.sections)}
+    try:
+        rows = list(csv.DictReader(path.read_text(encoding="utf-8-sig").splitlines()))
+    except UnicodeDecodeError as error:
+        return (), [f"places, file: {path.name} is not UTF-8 text at byte {error.start}; save it as UTF-8"]
+    for line, row in enumerate(rows, 2):
+        try:
+            places.append(_place_of(row, names, route))
+        except ValueError as error:
+            faults.append(f"places, file: {path.name} line {line}: {error}")
+    return tuple(places), faults
+
+
+def _plain(section_name: str) -> str:
+    return section_name.replace("–", "-").strip()
+
+
+def _place_of(row: dict[str, str | None], sections: dict[str, int], route: Route) -> Place:
+    lacking = [key for key in ("name", "section", "chainage") if not row.get(key)]
+    if lacking:
+        raise ValueError(f"no {', '.join(lacking)}; the columns are name, section, chainage and, if known, lat, lon")
+    section = sections.get(_plain(row["section"] or ""))
+    if section is None:
+        raise ValueError(f"no section {row['section']!r}; sections are {', '.join(sections)}")
+    distance = parse_quantity(row["chainage"] or "", "m").value
+    length = route.sections[section].length.value
+    if not 0 <= distance <= length:
+        raise ValueError(f"chainage {row['chainage']} is not on the section, which is {length:g} m long")
+    lat, lon = (float(text) if (text := row.get(key)) else None for key in ("lat", "lon"))
+    return Place(row["name"] or "", section, distance, lat, lon)

@@ -1,0 +1,271 @@
+"""From a terminal's recording to the arrivals in it: channels to waves, waves to picks."""
+
+from collections.abc import Mapping
+from dataclasses import dataclass, replace
+
+import numpy as np
+
+from twlocate.arrays import FloatArray
+from twlocate.arrivals import Arrival, Gate, Picks, Trace, pick, strongest_mode
+from twlocate.case import Case, Terminal
+from twlocate.errors import RecordError
+from twlocate.quantity import unit_scale
+from twlocate.records import Channel, Record, Stretch, read
+from twlocate.waves import AERIAL_MODES
+
+VARIABLES = {"v": ("voltage", "V"), "i": ("current", "A"), "p": ("pressure", "Pa"), "q": ("flow", "m**3/s")}
+"""Name and SI unit of what a role measures, by the role's first letter."""
+
+ACROSS_AND_THROUGH = (("v", "i"), ("p", "q"))
+
+PHASES = "abc"
+
+FEWEST_SAMPLES = 64
+"""Fewer samples than this hold no noise to measure a front against."""
+
+PULSE_STAYS_UP = 0.4
+"""Between its edges a pulse stays above this share of its height."""
+
+FLAT_TOP = 3
+"""This many equal readings at the limit of a channel are taken for clipping."""
+
+
+@dataclass(frozen=True)
+class Wave:
+    """A weighted sum of a terminal's channels: a variable, a mode of three phases, an incoming wave."""
+
+    name: str
+    weights: Mapping[str, float]
+    """Role → weight."""
+
+
+@dataclass(frozen=True)
+class Observation:
+    """What was seen at one terminal."""
+
+    terminal: Terminal
+    record: Record
+    wave: Wave
+    picks: Picks
+    gates: tuple[Gate, ...]
+
+
+@dataclass(frozen=True)
+class _Signals:
+    """Simultaneous SI samples of a terminal's roles over one unbroken run."""
+
+    by_role: Mapping[str, FloatArray]
+    steps: Mapping[str, float]
+    rate_hz: float
+    start_s: float
+    line_frequency_hz: float | None
+
+
+def observe(case: Case, terminal: Terminal) -> Observation:
+    """Read a terminal's recording and pick the arrivals in the wave that shows them best.
+
+    Raises
+    ------
+    RecordError
+        The recording cannot be read, or lacks a channel, a unit or an even time axis.
+    """
+    record = read(terminal.recording)
+    channels = {role: record.channel(name) for role, name in terminal.channels.items()}
+    signals = _signals(record, channels)
+    waves = _waves(signals, _impedance_at(case, terminal.node))
+    candidates = [(wave, pick(_trace(signals, wave))) for wave in waves]
+    wave, picks = max(candidates, key=lambda candidate: _strength(candidate[1]))
+    if terminal.launches == "pulse":
+        picks = replace(picks, arrivals=without_trailing_edges(picks.arrivals, picks.trace))
+    return Observation(terminal, record, wave, picks, (*picks.gates, _clipping(signals, wave, picks)))
+
+
+def _strength(picks: Picks) -> float:
+    return picks.arrivals[0].snr_db if picks.arrivals else -np.inf
+
+
+# ---------------------------------------------------------------- channels to simultaneous signals
+
+
+def _signals(record: Record, channels: Mapping[str, Channel]) -> _Signals:
+    stretch = _stretch_of_event(record)
+    if stretch.stamps_s is not None:
+        raise RecordError(f"{record.path}: its samples are unevenly spaced; waves need an even sampling rate")
+    skew_s = min(channel.skew_s for channel in channels.values())
+    rows = {
+        role: _aligned(_in_si(record, channel, role)[stretch.first : stretch.stop], channel, skew_s, stretch.rate_hz)
+        for role, channel in channels.items()
+    }
+    first, stop = _longest_complete_run(np.array(list(rows.values())))
+    if stop - first < FEWEST_SAMPLES:
+        raise RecordError(
+            f"{record.path}: {stop - first} unbroken samples in the channels named; {FEWEST_SAMPLES} or more are needed"
+        )
+    return _Signals(
+        by_role={role: row[first:stop] for role, row in rows.items()},
+        steps={role: (channel.step or 0.0) * _si_scale(record, channel, role) for role, channel in channels.items()},
+        rate_hz=stretch.rate_hz,
+        start_s=stretch.start_s + first / stretch.rate_hz + skew_s,
+        line_frequency_hz=record.line_frequency_hz,
+    )
+
+
+def _stretch_of_event(record: Record) -> Stretch:
+    """The stretch with the trigger in it, or else the longest."""
+
+    def holds_trigger(stretch: Stretch) -> bool:
+        return record.trigger_s is not None and 0 < record.trigger_s - stretch.start_s <= stretch.span_s
+
+    return max(record.stretches, key=lambda stretch: (holds_trigger(stretch), stretch.count))
+
+
+def _si_scale(record: Record, channel: Channel, role: str) -> float:
+    name, unit = VARIABLES[role[0]]
+    try:
+        return unit_scale(channel.unit, unit)
+    except ValueError as error:
+        raise RecordError(
+            f"{record.path}: channel {channel.name!r} is in {channel.unit!r}, which is no unit of {name} "
+            f"as its role {role!r} needs; name another channel"
+        ) from error
+
+
+def _in_si(record: Record, channel: Channel, role: str) -> FloatArray:
+    return channel.samples * _si_scale(record, channel, role)
+
+
+def _aligned(samples: FloatArray, channel: Channel, skew_s: float, rate_hz: float) -> FloatArray:
+    """Interpolate a channel that is sampled later than the others to their instants."""
+    late = (channel.skew_s - skew_s) * rate_hz
+    if late == 0:
+        return samples
+    index = np.arange(samples.size, dtype=np.float64)
+    return np.interp(index, index + late, samples)
+
+
+def _longest_complete_run(rows: FloatArray) -> tuple[int, int]:
+    """Return first and stop of the longest run of columns without a missing sample."""
+    complete = np.isfinite(rows).all(axis=0)
+    edges = np.diff(np.concatenate([[False], complete, [False]]).astype(np.int8))
+    starts, stops = np.flatnonzero(edges == 1), np.flatnonzero(edges == -1)
+    if starts.size == 0:
+        return 0, 0
+    longest = int(np.argmax(stops - starts))
+    return int(starts[longest]), int(stops[longest])
+
+
+# ---------------------------------------------------------------- signals to waves
+
+
+def _impedance_at(case: Case, node: str) -> float | None:
+    """Impedance of the section that ends at a terminal; None at a tee, where there is no single one."""
+    links = case.route.neighbours[node]
+    return case.route.sections[links[0][0]].impedance if len(links) == 1 else None
+
+
+def _waves(signals: _Signals, impedance: float | None) -> list[Wave]:
+    """Return the waves worth picking: the incoming one where it can be split off, else each variable."""
+    letters = list(dict.fromkeys(role[0] for role in signals.by_role))
+    for across, through in ACROSS_AND_THROUGH:
+        if impedance is not None and _phases(signals, across) == _phases(signals, through) != ():
+            return [_in_modes(signals, "incoming wave", {across: 0.5, through: -0.5 * impedance})]
+    return [_in_modes(signals, VARIABLES[letter][0], {letter: 1.0}) for letter in letters]
+
+
+def _phases(signals: _Signals, letter: str) -> tuple[str, ...]:
+    """Which suffixes a variable is recorded with: the three phases, none (one conductor), or () if not at all."""
+    return tuple(phase for phase in ("", *PHASES) if letter + phase in signals.by_role)
+
+
+def _in_modes(signals: _Signals, name: str, weights: dict[str, float]) -> Wave:
+    """Return the wave `weights` makes of the variables, in the strongest aerial mode if it has three phases."""
+    if _phases(signals, next(iter(weights))) != tuple(PHASES):
+        return Wave(name, weights)
+    in_phases = [_sum(signals, {letter + phase: w for letter, w in weights.items()}) for phase in PHASES]
+    mode = strongest_mode(np.array(in_phases))
+    shares = zip(PHASES, AERIAL_MODES[mode], strict=True)
+    of_roles = {letter + phase: w * share for phase, share in shares for letter, w in weights.items() if share}
+    return Wave(f"{name}, {mode}", of_roles)
+
+
+def _sum(signals: _Signals, weights: Mapping[str, float]) -> FloatArray:
+    total = np.zeros_like(next(iter(signals.by_role.values())))
+    for role, weight in weights.items():
+        total += weight * signals.by_role[role]
+    return total
+
+
+def _trace(signals: _Signals, wave: Wave) -> Trace:
+    steps = [weight * signals.steps[role] for role, weight in wave.weights.items()]
+    first_letter = next(iter(wave.weights))[0]
+    return Trace(
+        samples=_sum(signals, wave.weights),
+        rate_hz=signals.rate_hz,
+        start_s=signals.start_s,
+        name=wave.name,
+        unit=VARIABLES[first_letter][1],
+        step=float(np.hypot.reduce(steps)),
+        line_frequency_hz=signals.line_frequency_hz,
+    )
+
+
+# ---------------------------------------------------------------- pulses
+
+
+def without_trailing_edges(arrivals: tuple[Arrival, ...], trace: Trace) -> tuple[Arrival, ...]:
+    """Leave out the falling edge of a launched pulse and those of its echoes.
+
+    The pulse lasts from the first front to the second if that has the other sign and the trace stays up in
+    between. A pulse too short for that is one arrival, and nothing is left out.
+    """
+    width_s = _pulse_width_s(arrivals, trace)
+    kept: list[Arrival] = []
+    for arrival in arrivals:
+        ends = (
+            front.polarity != arrival.polarity and abs(arrival.time_s - front.time_s - width_s) < width_s / 2
+            for front in kept
+        )
+        if width_s == 0 or not any(ends):
+            kept.append(arrival)
+    return tuple(kept)
+
+
+def _pulse_width_s(arrivals: tuple[Arrival, ...], trace: Trace) -> float:
+    """Return how long the launched pulse lasts; 0 where its two edges are not told apart."""
+    if len(arrivals) < 2 or arrivals[0].polarity == arrivals[1].polarity:
+        return 0.0
+    start, end = (round((arrival.time_s - trace.start_s) * trace.rate_hz) for arrival in arrivals[:2])
+    third = (end - start) // 3
+    middle = trace.samples[start + third : end - third]
+    before = trace.samples[: max(start - third, 1)]
+    stays_up = middle.size > 0 and arrivals[0].polarity * (np.median(middle) - np.median(before)) > (
+        PULSE_STAYS_UP * arrivals[0].amplitude
+    )
+    return arrivals[1].time_s - arrivals[0].time_s if stays_up else 0.0
+
+
+# ---------------------------------------------------------------- clipping
+
+
+def _clipping(signals: _Signals, wave: Wave, picks: Picks) -> Gate:
+    """Whether any channel of the wave stands at its limit where the first front is."""
+    name = "no channel is clipped at the front"
+    if not picks.arrivals:
+        return Gate(name, True, "there is no front")
+    front = picks.arrivals[0]
+    at = round((front.time_s - signals.start_s) * signals.rate_hz)
+    reach = max(8, round(2 * front.rise_s * signals.rate_hz))
+    window = slice(max(at - reach, 0), at + reach)
+    clipped = [role for role in wave.weights if _flat_at_limit(signals.by_role[role], window)]
+    detail = f"{', '.join(clipped)} at the end of its range" if clipped else "all within their range"
+    return Gate(name, not clipped, detail, fatal=True)
+
+
+def _flat_at_limit(samples: FloatArray, window: slice) -> bool:
+    """Whether a run of equal readings at the channel's largest or smallest value lies in the window."""
+    for limit in (samples.max(), samples.min()):
+        at_limit = samples[window] == limit
+        runs = np.convolve(at_limit, np.ones(FLAT_TOP), "valid") if at_limit.size >= FLAT_TOP else np.zeros(0)
+        if (runs >= FLAT_TOP).any():
+            return True
+    return False

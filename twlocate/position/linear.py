@@ -1,0 +1,152 @@
+"""The linear-Gaussian model of one explanation for an event in one section.
+
+At a fixed place x the arrival times are linear in everything else that is unknown::
+
+    t = c + m·x + J(x)·δ + F·β + ε
+
+with δ the errors of the inputs (prior: zero mean, variances u²), ε the arrival errors, and β what has a flat
+prior: the event time and the offsets of free clocks. δ and β are integrated out in closed form, which leaves
+the likelihood of x (A. Gelman et al., Bayesian Data Analysis, 3rd ed. 2013, sec. 14.8, from memory; the
+projection on the complement of F is that of generalised least squares).
+"""
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+import numpy as np
+
+from twlocate.arrays import FloatArray
+from twlocate.position.evidence import Reading, Station
+from twlocate.position.explanations import Explanation, path_of
+from twlocate.position.inputs import columns
+from twlocate.routes import Route, travel_time
+
+
+@dataclass(frozen=True)
+class LinearModel:
+    """Arrival times of the n attributed readings as a function of x, for P inputs."""
+
+    times: FloatArray
+    """(n,) measured times less known delays and clock offsets, s."""
+    constant: FloatArray
+    """(n,) predicted time at x = 0 for an event at time zero, s."""
+    per_metre: FloatArray
+    """(n,) its slope, s/m."""
+    at_zero: FloatArray
+    """(n, P) d t / d input at x = 0."""
+    slope: FloatArray
+    """(n, P) its slope a metre of x."""
+    flat: FloatArray
+    """(n, d) columns of the unknowns with a flat prior."""
+    variance: FloatArray
+    """(n,) of the readings, s²."""
+    input_variance: FloatArray
+    """(P,)"""
+    n_strays: int = 0
+    """Readings that this explanation leaves to chance."""
+
+    @property
+    def informative(self) -> bool:
+        """Whether the times say anything about x at all."""
+        return bool(self.times.size > self.flat.shape[1])
+
+    def jacobian(self, x: FloatArray) -> FloatArray:
+        """Return d t / d input at each x, shape (G, n, P)."""
+        return self.at_zero + x[:, None, None] * self.slope
+
+    def residual(self, x: FloatArray) -> FloatArray:
+        """Return measured less predicted time at each x, shape (G, n)."""
+        return self.times - self.constant - x[:, None] * self.per_metre
+
+    def covariance(self, x: FloatArray) -> FloatArray:
+        """Return the covariance of the residual at each x, shape (G, n, n)."""
+        weighted = self.jacobian(x) * np.sqrt(self.input_variance)
+        return weighted @ weighted.transpose(0, 2, 1) + np.diag(self.variance)
+
+    def weights(self, x: FloatArray) -> tuple[FloatArray, FloatArray]:
+        """Return W (G, n, n) with the flat unknowns projected out, and the log of its normalisation (G,)."""
+        covariance = self.covariance(x)
+        inverse = np.linalg.inv(covariance)
+        through_flat = inverse @ self.flat
+        normal = self.flat.T @ through_flat
+        projected = inverse - through_flat @ np.linalg.solve(normal, through_flat.transpose(0, 2, 1))
+        log_norm = -0.5 * (np.linalg.slogdet(covariance)[1] + np.linalg.slogdet(normal)[1])
+        return np.asarray(projected, dtype=np.float64), np.asarray(log_norm, dtype=np.float64)
+
+    def log_likelihood(self, x: FloatArray, window_s: float) -> FloatArray:
+        """Return log p(times | x) at each x, shape (G,).
+
+        `window_s` is the span over which a flat unknown or a stray reading may lie; it makes explanations
+        with different numbers of them comparable.
+        """
+        n, d = self.flat.shape
+        proper = -0.5 * (n - d) * np.log(2 * np.pi) - (d + self.n_strays) * np.log(window_s)
+        if not self.informative:
+            return np.full(x.shape, proper)
+        weights, log_norm = self.weights(x)
+        residual = self.residual(x)
+        misfit = np.einsum("gi,gij,gj->g", residual, weights, residual)
+        return np.asarray(proper + log_norm - 0.5 * misfit, dtype=np.float64)
+
+    def best_x(self, length_m: float) -> tuple[float, float]:
+        """Return the x of least misfit on [0, `length_m`] and its standard uncertainty, m.
+
+        The residual is linear in x, so each step solves exactly for the weights of the last.
+        """
+        x, spread = length_m / 2, length_m
+        for _ in range(3):
+            here = np.array([x])
+            weights = self.weights(here)[0][0]
+            pull = weights @ self.per_metre
+            curvature = float(pull @ self.per_metre)
+            if curvature <= 0:
+                return x, length_m
+            x = float(np.clip(x + pull @ self.residual(here)[0] / curvature, 0.0, length_m))
+            spread = curvature**-0.5
+        return x, spread
+
+
+def linear_model(
+    route: Route, section: int, stations: Sequence[Station], readings: Sequence[Reading], explanation: Explanation
+) -> LinearModel:
+    """Set up the model of `explanation` for an event in `section`."""
+    rows = [readings[index] for index, _ in explanation.causes]
+    travels = [
+        travel_time(route, path_of(cause, route, section, stations[row.station].node))
+        for row, (_, cause) in zip(rows, explanation.causes, strict=True)
+    ]
+    partials = [columns(travel, row.station, len(stations)) for travel, row in zip(travels, rows, strict=True)]
+    n_inputs = 3 * len(route.sections) + 2 * len(stations)
+    return LinearModel(
+        times=np.array([row.time_s - _known_lag(stations[row.station]) for row in rows]),
+        constant=np.array([travel.constant_s for travel in travels]),
+        per_metre=np.array([travel.per_metre for travel in travels]),
+        at_zero=np.array([at_zero for at_zero, _ in partials]).reshape(-1, n_inputs),
+        slope=np.array([slope for _, slope in partials]).reshape(-1, n_inputs),
+        flat=_flat_columns(rows, stations, explanation),
+        variance=np.array([row.u_s**2 for row in rows]),
+        input_variance=_input_variances(route, stations),
+        n_strays=len(readings) - len(rows),
+    )
+
+
+def _known_lag(station: Station) -> float:
+    clock = 0.0 if station.clock is None else station.clock.value
+    return station.delay.value + clock
+
+
+def _input_variances(route: Route, stations: Sequence[Station]) -> FloatArray:
+    of_sections = [q.u**2 for section in route.sections for q in (section.length, section.speed, section.flow)]
+    of_delays = [station.delay.u**2 for station in stations]
+    of_clocks = [0.0 if station.clock is None else station.clock.u**2 for station in stations]
+    return np.array([*of_sections, *of_delays, *of_clocks])
+
+
+def _flat_columns(rows: Sequence[Reading], stations: Sequence[Station], explanation: Explanation) -> FloatArray:
+    """One column for the event time, one for each free or wrong clock; never a column that others add up to."""
+    free = {s for s, station in enumerate(stations) if station.clock is None} | explanation.wrong_clocks
+    used = {row.station for row in rows}
+    groups = [{station} for station in sorted(used & free)]
+    if used - free:
+        groups.append(used)
+    return np.array([[float(row.station in group) for group in groups] for row in rows]).reshape(len(rows), len(groups))
