@@ -35,7 +35,7 @@ def test_round_trip_is_exact(tmp_path, file_type, name):
         assert (after.name, after.unit, after.step, after.offset) == (before.name, before.unit, STEP, 0.25)
     for before, after in zip(written.status, back.status, strict=True):
         np.testing.assert_array_equal(after.states, before.states)
-    assert [repair.what for repair in back.repairs] == ["1 samples missing"]
+    assert [repair.what for repair in back.repairs] == ["1 sample missing"]
 
 
 @given(

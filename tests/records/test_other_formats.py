@@ -138,7 +138,7 @@ def test_tdms_waveform_properties(tmp_path):
     assert record.stretches[0].rate_hz == pytest.approx(500.0)
 
 
-@pytest.mark.parametrize("name", ["d.wav", "d.flac", "d.mat", "d.h5", "d.tdms"])
+@pytest.mark.parametrize("name", ["d.wav", "d.flac", "d.h5", "d.tdms"])
 def test_damage_is_one_line_that_names_the_file(tmp_path, name):
     (tmp_path / name).write_bytes(b"this is no recording at all" * 40)
     with pytest.raises(RecordError, match=rf"{name}: not a readable \w+ file \(.+\)$"):

@@ -27,7 +27,7 @@ def test_rate_start_and_clock_from_comment_lines(tmp_path):
     assert [(c.name, c.unit) for c in record.channels] == [("pressure", "kPa"), ("flow", "m³/s")]
     assert record.channels[0].samples.tolist() == [1.5, 2.5]
     assert record.channel("flow").missing == 1
-    assert record.repairs[-1].what == "1 samples missing"
+    assert record.repairs[-1].what == "1 sample missing"
 
 
 @pytest.mark.parametrize(
@@ -81,10 +81,109 @@ def test_gaps_stay_gaps_and_uneven_times_are_kept(tmp_path):
         ("time [weeks],p\n1,2\n2,3\n", "time column is in 'weeks'"),
         ("time [s],p\n1,2\nx,3\n", "row 2: the time 'x'"),
         ("time [s],p\n1,2\n1,3\n", "do not advance"),
-        ("# rate: 5 Hz\n# start: yesterday\np\n1\n", "start 'yesterday' is not an ISO 8601 time"),
-        ("# rate: 5 Hz\n# start: 2026-03-02T04:11:07Z\n# clock: good\np\n1\n", "clock 'good'"),
     ],
 )
 def test_refusals_name_the_file_and_the_way_out(tmp_path, text, message):
     with pytest.raises(RecordError, match=r"t\.csv: .*" + message):
         read(table(tmp_path, text))
+
+
+@pytest.mark.parametrize(
+    ("line", "what"),
+    [
+        ("# start: yesterday", "start 'yesterday' is not an ISO 8601 time"),
+        ("# start: 2026-03-02T04:11:07Z\n# clock: good", "clock 'good' is not a number"),
+        ("# start: 2026-03-02T04:11:07Z\n# clock: ± -1 ms", "clock '± -1 ms' has a negative uncertainty"),
+    ],
+)
+def test_an_unreadable_start_or_clock_frees_the_clock_and_keeps_the_record(tmp_path, line, what):
+    record = read(table(tmp_path, f"# rate: 5 Hz\n{line}\np\n1\n2\n"))
+    assert record.n_samples == 2
+    assert not record.clock.usable
+    assert record.repairs[0].what.startswith(what)
+
+
+def test_a_declared_free_clock_and_one_without_an_offset(tmp_path):
+    start = "# rate: 5 Hz\n# start: 2026-03-02T04:11:07\n"
+    free = read(table(tmp_path, f"{start}# clock: free\np\n1\n"))
+    assert (free.clock.usable, free.clock.notes[0]) == (False, "declared free in the file")
+    unstated = read(table(tmp_path, f"{start}p\n1\n"))
+    assert (unstated.clock.usable, unstated.clock.u_s, unstated.clock.utc_offset_s) == (True, None, None)
+    assert unstated.clock.notes[-1] == "offset from UTC not stated: times taken as UTC"
+
+
+@pytest.mark.parametrize("delimiter", ["\t", ";", ",", "|", "  "])
+def test_delimiters(tmp_path, delimiter):
+    rows = [["time [s]", "north p [kPa]", "q"], ["0.0", "1.5", "-2"], ["0.5", "2.5", "-3e1"], ["1.0", "3.5", "4"]]
+    if not delimiter.strip() and delimiter != "\t":
+        rows[0][1] = "p [kPa]"
+    record = read(table(tmp_path, "\n".join(delimiter.join(row) for row in rows), name="t.txt"))
+    assert [(c.name, c.unit) for c in record.channels][1] == ("q", "")
+    assert record.channels[0].samples.tolist() == [1.5, 2.5, 3.5]
+    assert record.channel("q").samples.tolist() == [-2.0, -30.0, 4.0]
+    assert record.stretches[0].rate_hz == pytest.approx(2.0)
+
+
+def test_units_on_a_line_of_their_own_and_a_preamble(tmp_path):
+    text = "Logger 12;site B\nserial;0042\n\nTime;Channel A;Channel B\n(ms);(mV);(V)\n0,0;1,5;2\n0,5;1,6;3\n"
+    record = read(table(tmp_path, text))
+    assert [(c.name, c.unit) for c in record.channels] == [("Channel A", "mV"), ("Channel B", "V")]
+    assert record.stretches[0].rate_hz == pytest.approx(2000.0)
+
+
+def test_date_and_time_in_two_columns(tmp_path):
+    text = "Date,Time,p [kPa]\n2026-03-02,04:11:07.250,1\n2026-03-02,04:11:07.260,2\n"
+    record = read(table(tmp_path, text))
+    assert record.start_ns == START_NS
+    assert record.stretches[0].rate_hz == pytest.approx(100.0)
+    assert [c.name for c in record.channels] == ["p"]
+
+
+def test_blank_and_odd_fields_are_missing_and_counted(tmp_path):
+    text = "time [s],p [kPa],q [kPa]\n0,1,2\n1,,3\n2,n/a,4\n3,5\n4,6,inf\n"
+    record = read(table(tmp_path, text))
+    assert np.isnan(record.channel("p").samples).tolist() == [False, True, True, False, False]
+    assert record.channel("q").missing == 2
+    assert [repair.what for repair in record.repairs] == ["1 row with too few fields", "2 samples missing"]
+
+
+def test_rows_without_a_time_are_left_out_not_invented(tmp_path):
+    record = read(table(tmp_path, "time [s],p [kPa]\n0,1\n1,2\n,3\n3,4\nend of file\n"))
+    assert record.stretches[0].times_s().tolist() == [0.0, 1.0, 3.0]
+    assert record.channel("p").samples.tolist() == [1.0, 2.0, 4.0]
+    assert record.repairs[0].what == "2 rows without a readable time"
+
+
+def test_rate_and_time_at_odds(tmp_path):
+    record = read(table(tmp_path, "# rate: 5 Hz\ntime [s],p\n0,1\n0.1,2\n0.2,3\n"))
+    assert record.stretches[0].rate_hz == pytest.approx(10.0)
+    assert record.repairs[0].what == "rate 5 Hz stated, 10 Hz by the time column"
+
+
+def test_relative_times_count_from_the_stated_start(tmp_path):
+    record = read(table(tmp_path, "# start: 2026-03-02T04:11:07.25Z\ntime [ms],u [V]\n-10,1\n-5,2\n0,3\n"))
+    assert record.start_ns == START_NS
+    assert record.stretches[0].start_s == pytest.approx(-0.010)
+
+
+def test_a_hundred_megahertz_keeps_its_picoseconds(tmp_path):
+    rows = "".join(f"{k * 1e-8:.10f},{k % 7}\n" for k in range(4000))
+    record = read(table(tmp_path, "time [s],u [V]\n" + rows))
+    assert record.stretches[0].rate_hz == pytest.approx(1e8, rel=1e-9)
+    assert record.stretches[0].stamps_s is None
+
+
+def test_a_window_of_a_table(tmp_path):
+    rows = "".join(f"{k / 10},{k}\n" for k in range(100))
+    record = read(table(tmp_path, "time [s],u [V]\n" + rows), (2.0, 3.05))
+    assert record.channel("u").samples.tolist() == list(range(20, 31))
+    assert record.stretches[0].start_s == pytest.approx(2.0)
+
+
+def test_damaged_bytes_do_not_turn_the_whole_text_into_another_language(tmp_path):
+    text = "# station: Überlandwerk Süd ß\n# rate: 5 Hz\nDruck [µbar]\n1\n2\n".encode()
+    (tmp_path / "t.csv").write_bytes(text.replace("ß".encode(), b"\xc3"))
+    record = read(tmp_path / "t.csv")
+    assert record.station.startswith("Überlandwerk Süd")
+    assert record.channels[0].unit == "µbar"
+    assert record.repairs[0].what == "bytes that are not UTF-8 in a text that else is"

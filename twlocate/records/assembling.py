@@ -12,7 +12,7 @@ from twlocate.quantity import parse_quantity
 from twlocate.records.moments import NUMBER, SECOND_NS, iso_moment
 from twlocate.records.record import Channel, Clock, Record, Stretch
 from twlocate.records.repairs import LIKELY, SURE, RepairLog
-from twlocate.records.spacing import stretches_by_stamps
+from twlocate.records.spacing import counted, stretches_by_stamps
 
 UNIT_NS = {"s": 10**9, "sec": 10**9, "ms": 10**6, "us": 10**3, "µs": 10**3, "μs": 10**3, "ns": 1, "min": 60 * 10**9}
 EPOCH_S = 10**8
@@ -80,14 +80,23 @@ def assemble(
         raise RecordError("there is no column of readings")
     for channel in channels:
         if channel.missing:
-            log.add(f"{channel.missing} samples missing", f"channel {channel.name!r}", "left out (NaN)", SURE)
+            log.add(
+                f"{counted(channel.missing, 'sample')} missing", f"channel {channel.name!r}", "left out (NaN)", SURE
+            )
     stretches, doubts = _stretches(times, _rate_hz(settings), channels[0].samples.size, log)
-    start_ns, resolution, notes = _start(settings, times)
+    start_ns, resolution, notes = _start(settings, times, log)
     return Record(
         path=path, format=format_name, channels=channels, stretches=stretches, station=settings.get("station", ""),
-        start_ns=start_ns, resolution_ns=resolution, clock=_clock(settings, start_ns, notes, doubts),
-        repairs=tuple(log.entries),
+        start_ns=start_ns, resolution_ns=resolution, clock=_clock(settings, start_ns, notes, doubts, log),
+        repairs=log.repairs,
     )  # fmt: skip
+
+
+def note_missing(channels: tuple[Channel, ...], log: RepairLog) -> None:
+    """Write down how many samples each channel lacks."""
+    for channel in channels:
+        if missing := channel.missing:
+            log.add(f"{counted(missing, 'sample')} missing", f"channel {channel.name!r}", "left out (NaN)", SURE)
 
 
 def _rate_hz(settings: Mapping[str, str]) -> float | None:
@@ -119,7 +128,9 @@ def _stretches(
     return stretches, [*doubts, what]
 
 
-def _start(settings: Mapping[str, str], times: Times | None) -> tuple[int | None, int | None, list[str]]:
+def _start(
+    settings: Mapping[str, str], times: Times | None, log: RepairLog
+) -> tuple[int | None, int | None, list[str]]:
     """Return the record's zero in UTC nanoseconds, its resolution, and notes on the clock."""
     if times is not None and times.zero_ns is not None:
         return times.zero_ns, max(1, round(times.tick_ns)), [] if times.offset_stated else [NO_OFFSET]
@@ -129,11 +140,14 @@ def _start(settings: Mapping[str, str], times: Times | None) -> tuple[int | None
     try:
         moment = iso_moment(text)
     except ValueError as error:
-        raise RecordError(f"start {error}") from None
+        log.add(f"start {error}", "setting 'start'", "no absolute time", SURE)
+        return None, None, []
     return moment.ns, moment.resolution_ns, [] if moment.offset_s is not None else [NO_OFFSET]
 
 
-def _clock(settings: Mapping[str, str], start_ns: int | None, notes: list[str], doubts: list[str]) -> Clock:
+def _clock(
+    settings: Mapping[str, str], start_ns: int | None, notes: list[str], doubts: list[str], log: RepairLog
+) -> Clock:
     text = settings.get("clock")
     if start_ns is None:
         return Clock(None, False, ("no absolute time", *doubts))
@@ -143,12 +157,14 @@ def _clock(settings: Mapping[str, str], start_ns: int | None, notes: list[str], 
     if text.strip().lower() == "free":
         return Clock(None, False, ("declared free in the file", *notes, *doubts), offset_s)
     try:
-        u_s = parse_quantity(text, "s").u
+        return Clock(parse_quantity(text, "s").u, not doubts, (*notes, *doubts), offset_s)
     except ValueError as error:
-        raise RecordError(f"clock {error}") from None
-    return Clock(u_s, not doubts, (*notes, *doubts), offset_s)
+        log.add(f"clock {error}", "setting 'clock'", "the clock cannot be used", SURE)
+        return Clock(None, False, ("the stated accuracy cannot be read", *notes, *doubts), offset_s)
 
 
 def as_readings(values: object) -> FloatArray:
-    """Return numbers of any kind as contiguous float64 readings, shape (samples,)."""
-    return np.ascontiguousarray(values, dtype=np.float64)
+    """Return numbers of any kind as contiguous float64 readings, NaN where infinite; shape (samples,)."""
+    readings = np.array(values, dtype=np.float64)
+    readings[~np.isfinite(readings)] = np.nan
+    return readings

@@ -1,5 +1,6 @@
 """WAV, FLAC and their kin by soundfile; the broadcast-wave time reference (EBU Tech 3285) gives the start."""
 
+import math
 import struct
 from dataclasses import replace
 from pathlib import Path
@@ -9,7 +10,7 @@ import numpy as np
 
 from twlocate.arrays import FloatArray
 from twlocate.errors import RecordError
-from twlocate.records.assembling import assemble
+from twlocate.records.assembling import as_readings, assemble
 from twlocate.records.extras import needed
 from twlocate.records.moments import SECOND_NS, iso_moment
 from twlocate.records.record import Channel, Record, Stretch
@@ -19,6 +20,7 @@ from twlocate.records.windows import windowed_stretches
 BITS = {"PCM_S8": 8, "PCM_U8": 8, "PCM_16": 16, "PCM_24": 24, "PCM_32": 32}
 DATE_OFFSET, DATE_LENGTH, TIME_LENGTH = 320, 10, 8
 """Of the bext chunk: description 256, originator 32, reference 32, then date, time and the 64-bit time reference."""
+BLOCK_FRAMES = 1 << 16
 MAX_CHUNKS = 1000
 MAX_CHUNK_BYTES = 1 << 16
 
@@ -41,24 +43,41 @@ def read_audio(path: Path, span: tuple[float, float] | None) -> Record:
 
 
 def _read(path: Path, file: Any, span: tuple[float, float] | None, log: RepairLog) -> Record:
-    whole = (Stretch(0, int(file.frames), 0.0, float(file.samplerate)),)
-    stretches, ranges = windowed_stretches(whole, span) if span else (whole, [(0, int(file.frames))])
-    first, stop = ranges[0]
+    whole = Stretch(0, int(file.frames), 0.0, float(file.samplerate))
+    (stretch,), ((first, stop),) = windowed_stretches((whole,), span or (0.0, math.inf))
     file.seek(first)
-    samples = file.read(stop - first, dtype="float64", always_2d=True)
-    if len(samples) != stop - first:
-        raise RecordError(f"{len(samples)} samples where the header promises {stop - first}")
+    samples = _frames(file, stop - first)
+    if len(samples) < stop - first:
+        what = f"{len(samples)} samples where the header promises {stop - first}"
+        log.add(what, "sound data", "what can be decoded is read", SURE)
     channels = tuple(_channel(index, column, file.subtype) for index, column in enumerate(samples.T, start=1))
     settings = {"rate": repr(file.samplerate)} | broadcast_start(path, file.samplerate, log)
     record = assemble(path, f"{file.format} {file.subtype}", channels, None, settings, log)
-    return replace(record, stretches=stretches)
+    return replace(record, stretches=(replace(stretch, count=len(samples)),), repairs=log.repairs)
+
+
+def _frames(file: Any, count: int) -> FloatArray:
+    """Return up to `count` frames, shape (frames, channels): those before the first that cannot be decoded."""
+    blocks = []
+    while count > 0:
+        try:
+            block = file.read(min(count, BLOCK_FRAMES), dtype="float64", always_2d=True)
+        except RuntimeError:  # what soundfile raises for a damaged frame
+            break
+        if not len(block):
+            break
+        blocks.append(block)
+        count -= len(block)
+    if not blocks:
+        raise RecordError("no sample of it can be decoded")
+    return np.concatenate(blocks)
 
 
 def _channel(number: int, samples: FloatArray, subtype: str) -> Channel:
     bits = BITS.get(subtype)
     step = None if bits is None else 2.0 ** (1 - bits)
     limits = (None, None) if step is None else (-1.0, 1.0 - step)
-    return Channel(f"channel {number}", "", np.ascontiguousarray(samples), step=step, low=limits[0], high=limits[1])
+    return Channel(f"channel {number}", "", as_readings(samples), step=step, low=limits[0], high=limits[1])
 
 
 def broadcast_start(path: Path, rate_hz: int, log: RepairLog) -> dict[str, str]:

@@ -1,57 +1,64 @@
 """Delimited numbers, fast where the text is regular and forgiving where it is not."""
 
 import warnings
+from collections.abc import Sequence
 
 import numpy as np
 from numpy.typing import NDArray
 
 from twlocate.arrays import FloatArray
 
-BLOCK_CHARACTERS = 1 << 22
-"""Text is parsed in blocks of about this size, cut at line ends."""
-
-
-def line_blocks(data: bytes) -> list[bytes]:
-    """Cut `data` into blocks that end at a line end."""
-    blocks = []
-    start = 0
-    while start < len(data):
-        stop = start + BLOCK_CHARACTERS
-        end = data.find(b"\n", stop) + 1 if stop < len(data) else len(data)
-        blocks.append(data[start : end or len(data)])
-        start = end or len(data)
-    return blocks
-
 
 def regular_numbers(data: bytes, columns: int) -> NDArray[np.number] | None:
-    """Return comma-delimited rows of `columns` whole numbers or decimals, or None where the text is not that regular.
+    """Return comma-delimited rows of `columns` numbers, or None where the text is not that regular.
 
-    Rows whose numbers of fields differ but add up are the caller's to notice, by the row numbers.
+    Whole numbers come as int64, decimals as float64 with NaN for a blank field between commas. Rows whose numbers
+    of fields differ but add up are the caller's to notice, by the row numbers.
     """
     flat = data.strip().replace(b"\n", b",")
-    for dtype in (np.int64, np.float64):
-        try:
-            with warnings.catch_warnings():
-                warnings.simplefilter("error")
-                numbers = np.fromstring(flat, dtype=dtype, sep=",")
-        except (ValueError, DeprecationWarning):
-            continue
-        return numbers.reshape(-1, columns) if numbers.size % columns == 0 else None
-    return None
+    numbers = _parsed(flat, np.int64)
+    if numbers is None:
+        blanks = flat.replace(b",,", b",nan,").replace(b",,", b",nan,")
+        numbers = _parsed(blanks, np.float64)
+    if numbers is None or numbers.size % columns:
+        return None
+    return numbers.reshape(-1, columns)
 
 
-def forgiving_numbers(lines: list[str], columns: int, delimiter: str | None = ",") -> tuple[FloatArray, list[int]]:
-    """Return rows of `columns` numbers, NaN where a field is blank or no number, and which lines had too few fields.
+def _parsed(flat: bytes, dtype: type[np.number]) -> NDArray[np.number] | None:
+    """Return comma-delimited numbers, or None where one is not of this type."""
+    try:
+        with warnings.catch_warnings():
+            warnings.simplefilter("error")  # older releases of numpy warn where newer ones raise
+            return np.fromstring(flat, dtype=dtype, sep=",")
+    except (ValueError, DeprecationWarning):
+        return None
 
-    Lines with too few fields are left out; surplus fields are ignored.
+
+def forgiving_numbers(
+    lines: Sequence[str], columns: int, delimiter: str | None = ","
+) -> tuple[FloatArray, NDArray[np.bool_]]:
+    """Return rows of `columns` numbers, and which lines had too few fields.
+
+    Parameters
+    ----------
+    lines
+        One a row; surplus fields are passed over.
+    columns
+        Number of fields wanted.
+    delimiter
+        Between fields; None for white space.
+
+    Returns
+    -------
+    numbers
+        Shape (lines, columns), NaN where a field is absent, blank or no number.
+    short
+        Shape (lines,).
     """
-    rows, short = [], []
-    for index, line in enumerate(lines):
-        fields = line.split(delimiter)
-        if len(fields) < columns:
-            short.append(index)
-            continue
-        rows.append([_number(field) for field in fields[:columns]])
+    fields = [line.split(delimiter, columns) for line in lines]
+    rows = [[_number(field) for field in row[:columns]] + [np.nan] * (columns - len(row)) for row in fields]
+    short = np.array([len(row) < columns for row in fields], dtype=np.bool_)
     return np.array(rows, dtype=np.float64).reshape(-1, columns), short
 
 

@@ -1,5 +1,6 @@
 """The list of departures from a format's standard that grows while a file is read."""
 
+import re
 from dataclasses import dataclass, field
 
 from twlocate.records.record import Repair
@@ -8,15 +9,37 @@ SURE = "sure"
 LIKELY = "likely"
 GUESS = "guess"
 
+LISTED_PLACE = re.compile(r"(.*?) (\d+|'.*')")
+PLACES_SHOWN = 6
+
 
 @dataclass
 class RepairLog:
     """Collects repairs in the order in which they were made."""
 
-    entries: list[Repair] = field(default_factory=list)
+    places: dict[tuple[str, str, str], list[str]] = field(default_factory=dict)
+    """(what, assumed, confidence) to the places where it was met."""
 
     def add(self, what: str, where: str, assumed: str, confidence: str) -> None:
-        """Write down one repair, once: the same departure met again is the same repair."""
-        repair = Repair(what, where, assumed, confidence)
-        if repair not in self.entries:
-            self.entries.append(repair)
+        """Write down one repair; the same departure met in several places is one repair."""
+        places = self.places.setdefault((what, assumed, confidence), [])
+        if where not in places:
+            places.append(where)
+
+    @property
+    def repairs(self) -> tuple[Repair, ...]:
+        """The repairs so far."""
+        return tuple(Repair(what, merged(where), assumed, sure) for (what, assumed, sure), where in self.places.items())
+
+
+def merged(places: list[str]) -> str:
+    """Return several places as one text: ``CFG line 3, 4, 5``."""
+    if len(places) == 1:
+        return places[0]
+    matches = [LISTED_PLACE.fullmatch(place) for place in places]
+    kinds = {match[1] for match in matches if match}
+    more = f" and {len(places) - PLACES_SHOWN} more" if len(places) > PLACES_SHOWN else ""
+    if all(matches) and len(kinds) == 1:
+        numbers = [match[2] for match in matches if match]
+        return f"{kinds.pop()} {', '.join(numbers[:PLACES_SHOWN])}{more}"
+    return "; ".join(places[:PLACES_SHOWN]) + more

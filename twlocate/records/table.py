@@ -1,19 +1,21 @@
 """Delimited text tables: a header with units, or comment lines that give rate and start."""
 
 import re
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from pathlib import Path
 
 import numpy as np
 
 from twlocate.arrays import FloatArray
 from twlocate.errors import RecordError
-from twlocate.records.assembling import UNIT_NS, Times, assemble, epoch_unit_ns
+from twlocate.records.assembling import as_readings, assemble
 from twlocate.records.delimited import forgiving_numbers
-from twlocate.records.moments import ISO_8601, NUMBER, SECOND_NS, Moment, exact_decimal, iso_moment, resolution_ns
+from twlocate.records.moments import ISO_8601, NUMBER
 from twlocate.records.record import Channel, Record
-from twlocate.records.repairs import LIKELY, SURE, RepairLog
+from twlocate.records.repairs import SURE, RepairLog
+from twlocate.records.spacing import counted
 from twlocate.records.text import decode
+from twlocate.records.time_columns import parse_times, time_pattern
 from twlocate.records.windows import cut
 
 Span = tuple[float, float]
@@ -22,7 +24,9 @@ SETTING = re.compile(r"#+\s*([A-Za-z][\w ]*?)\s*[:=]\s*(.*\S)\s*")
 COLUMN = re.compile(r"(.*?)\s*[\[(]([^\[\]()]*)[\])]\s*")
 SPACED_TITLE = re.compile(r"\S+(?:\s*[\[(][^\[\]()]*[\])])?")
 TIME_NAME = re.compile(r"(t|time|timestamp|date|datetime|date time|utc|elapsed)(\s.*)?", re.IGNORECASE)
+TIME_FIELD = re.compile(rf"{ISO_8601.pattern}|\d\d:\d\d(:\d\d(\.\d+)?)?")
 BLANK = ("", "nan", "NaN", "NAN", "null", "-", "—", "N/A")
+MOST = 0.7
 DELIMITERS = ("\t", ";", ",", "|")
 
 
@@ -52,10 +56,12 @@ def read_table(path: Path, span: Span | None) -> Record:
     """
     log = RepairLog()
     layout = lay_out(decode(path.read_bytes(), "the text", log))
-    numbers = _numbers(layout, log)
     time_columns = _time_columns(layout)
-    times = _times(layout, time_columns, log) if time_columns else None
-    channels = _channels(layout, numbers, time_columns)
+    times = None
+    if time_columns:
+        layout, texts = _timed_rows(layout, time_columns, log)
+        times = parse_times(texts, layout.units[time_columns[0]], log)
+    channels = _channels(layout, _numbers(layout, time_columns, log), time_columns)
     return cut(assemble(path, "text table", channels, times, layout.settings, log), span)
 
 
@@ -94,11 +100,10 @@ def _titles(line: str, delimiter: str | None, width: int) -> list[str]:
 
 
 def _delimiter(body: list[str]) -> str | None:
-    """Return the delimiter that the last lines use; None for white space."""
+    """Return the delimiter that most of the last lines use; None for white space."""
     tail = body[-20:]
-    counts = {delimiter: [line.count(delimiter) for line in tail] for delimiter in DELIMITERS}
-    steady = [delimiter for delimiter in DELIMITERS if counts[delimiter] and min(counts[delimiter]) > 0]
-    return steady[0] if steady else None
+    uses = {delimiter: sum(delimiter in line for line in tail) for delimiter in DELIMITERS}
+    return next((delimiter for delimiter in DELIMITERS if uses[delimiter] >= MOST * len(tail) > 0), None)
 
 
 def _has_decimal_comma(body: list[str], delimiter: str | None) -> bool:
@@ -111,7 +116,7 @@ def _has_decimal_comma(body: list[str], delimiter: str | None) -> bool:
 def _is_data(fields: list[str]) -> bool:
     numeric = [bool(NUMBER.fullmatch(field)) for field in fields]
     others = [field for field, number in zip(fields, numeric, strict=True) if not number]
-    return any(numeric) and all(field in BLANK or ISO_8601.fullmatch(field) for field in others)
+    return any(numeric) and all(field in BLANK or TIME_FIELD.fullmatch(field) for field in others)
 
 
 def _header(lines: list[list[str]], width: int) -> tuple[list[str], list[str]]:
@@ -137,81 +142,48 @@ def _time_columns(layout: Layout) -> list[int]:
     return (dated or named)[:1]
 
 
-def _numbers(layout: Layout, log: RepairLog) -> FloatArray:
+def _numbers(layout: Layout, time_columns: list[int], log: RepairLog) -> FloatArray:
     """Return the table as numbers, NaN where a field is none; shape (rows, columns)."""
     width = len(layout.names)
+    chosen = [column for column in range(width) if column not in time_columns]
     try:
-        return np.loadtxt(layout.rows, delimiter=layout.delimiter, comments=None, ndmin=2)
+        numbers = np.full((len(layout.rows), width), np.nan)
+        rows = np.loadtxt(layout.rows, delimiter=layout.delimiter, comments=None, ndmin=2, usecols=chosen)
+        numbers[:, chosen] = rows
+        return numbers
     except ValueError:
         numbers, short = forgiving_numbers(layout.rows, width, layout.delimiter)
-    if short:
-        log.add(f"{len(short)} rows with too few fields", "the table", "the missing fields left out (NaN)", SURE)
+    if lacking := int(np.count_nonzero(short)):
+        log.add(f"{counted(lacking, 'row')} with too few fields", "the table", "missing fields left out (NaN)", SURE)
     return numbers
 
 
-def _times(layout: Layout, columns: list[int], log: RepairLog) -> Times:
-    """Return the time of each row.
+def _timed_rows(layout: Layout, columns: list[int], log: RepairLog) -> tuple[Layout, list[str]]:
+    """Return the layout without the rows that have no readable time, and the times of the others as text.
 
     Raises
     ------
     RecordError
-        A row has no readable time.
+        Most rows have none.
     """
     texts = [_time_text(split(row, layout.delimiter), columns) for row in layout.rows]
-    if ISO_8601.fullmatch(texts[0]):
-        return _calendar_times(texts)
-    unit = layout.units[columns[0]]
-    if unit and unit not in UNIT_NS:
-        raise RecordError(f"the time column is in {unit!r}; known are {' '.join(UNIT_NS)}")
-    return _counted_times(texts, UNIT_NS.get(unit), log)
+    pattern = time_pattern(texts[0])
+    timed = [index for index, text in enumerate(texts) if pattern.fullmatch(text)]
+    lost = len(texts) - len(timed)
+    if lost and 2 * lost >= len(texts):
+        row, text = next((row, text) for row, text in enumerate(texts, start=1) if not pattern.fullmatch(text))
+        raise RecordError(f"row {row}: the time {text[:40]!r} is neither a number nor an ISO 8601 time")
+    if lost:
+        log.add(f"{counted(lost, 'row')} without a readable time", "the table", "left out", SURE)
+        layout = replace(layout, rows=[layout.rows[index] for index in timed])
+    return layout, [texts[index] for index in timed]
 
 
 def _time_text(fields: list[str], columns: list[int]) -> str:
     return " ".join(fields[column] if column < len(fields) else "" for column in columns)
 
 
-def _calendar_times(texts: list[str]) -> Times:
-    moments = [_moment(text, row) for row, text in enumerate(texts, start=1)]
-    digits = max(moment.digits for moment in moments)
-    ns = np.array([moment.ns for moment in moments], dtype=np.int64)
-    stated = moments[0].offset_s is not None
-    return Times((ns - ns[0]) * 1e-9, int(ns[0]), resolution_ns(digits), stated)
-
-
-def _moment(text: str, row: int) -> Moment:
-    try:
-        return iso_moment(text)
-    except ValueError as error:
-        raise RecordError(f"row {row}: {error}") from None
-
-
-def _counted_times(texts: list[str], unit_ns: int | None, log: RepairLog) -> Times:
-    """Return times given as numbers: from the record's start, or from 1970-01-01 when that large."""
-    epoch_unit = epoch_unit_ns(float(texts[0]) if NUMBER.fullmatch(texts[0]) else 0.0, unit_ns)
-    if unit_ns is None and epoch_unit is None:
-        log.add("no unit of time", "time column", "seconds", LIKELY)
-    scale = epoch_unit or unit_ns or SECOND_NS
-    picos = [_decimal(text, scale * 1000, row) for row, text in enumerate(texts, start=1)]
-    zero = picos[0] if epoch_unit else 0
-    seconds = np.array([value - zero for value in picos], dtype=np.float64) * 1e-12
-    tick_ns = scale * 10.0 ** -max(_decimals(text) for text in texts[:1000])
-    return Times(seconds, zero // 1000 if epoch_unit else None, tick_ns)
-
-
-def _decimal(text: str, scale: int, row: int) -> int:
-    try:
-        return exact_decimal(text, scale)
-    except ValueError as error:
-        raise RecordError(f"row {row}: the time {error}") from None
-
-
-def _decimals(text: str) -> int:
-    """Return the place of the last digit of a decimal number: 3 for 0.125 and for 125e-3."""
-    mantissa, _, exponent = text.lower().partition("e")
-    return len(mantissa.partition(".")[2]) - int(exponent or 0)
-
-
 def _channels(layout: Layout, numbers: FloatArray, time_columns: list[int]) -> tuple[Channel, ...]:
     chosen = [index for index in range(len(layout.names)) if index not in time_columns]
     columns = ((layout.names[index], layout.units[index], numbers[:, index]) for index in chosen)
-    return tuple(Channel(name, unit, np.ascontiguousarray(column)) for name, unit, column in columns)
+    return tuple(Channel(name, unit, as_readings(column)) for name, unit, column in columns)

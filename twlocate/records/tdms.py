@@ -1,5 +1,9 @@
 """TDMS files by nptdms: waveform properties give increment and start."""
 
+import contextlib
+import io
+import logging
+from collections.abc import Iterator
 from pathlib import Path
 from typing import Any
 
@@ -10,7 +14,7 @@ from twlocate.records.extras import needed
 from twlocate.records.moments import SECOND_NS
 from twlocate.records.named_arrays import NamedArrays, record_of_arrays
 from twlocate.records.record import Record
-from twlocate.records.repairs import SURE, RepairLog
+from twlocate.records.repairs import LIKELY, SURE, RepairLog
 from twlocate.records.windows import cut
 
 UNIT_PROPERTIES = ("unit_string", "NI_UnitDescription", "unit", "units")
@@ -27,19 +31,41 @@ def read_tdms(path: Path, span: tuple[float, float] | None) -> Record:
         The file is damaged, or its channels have no time.
     """
     nptdms = needed("nptdms")
+    log = RepairLog()
     try:
-        file = nptdms.TdmsFile.read(path, raw_timestamps=True)
+        with _complaints() as complaints:
+            # from memory: a damaged length then asks for no more than the file has
+            file = nptdms.TdmsFile.read(io.BytesIO(path.read_bytes()), raw_timestamps=True)
         channels = [channel for group in file.groups() for channel in group.channels()]
-        found, log = _gathered([channel for channel in channels if len(channel)])
+        found = _gathered([channel for channel in channels if len(channel)], log)
     except (RecordError, MemoryError):
         raise
     except Exception as error:  # the library raises a dozen unrelated types for a damaged file
         raise RecordError(f"not a readable TDMS file ({' '.join(str(error).split())[:120]})") from None
+    for complaint in complaints:
+        log.add(complaint, "TDMS segments", "what is there is read", LIKELY)
     return cut(record_of_arrays(path, "TDMS", found, log), span)
 
 
-def _gathered(channels: list[Any]) -> tuple[NamedArrays, RepairLog]:
-    log = RepairLog()
+@contextlib.contextmanager
+def _complaints() -> Iterator[list[str]]:
+    """Collect what the library would print about a departure from the format."""
+    from nptdms.log import log_manager
+
+    collected: list[str] = []
+
+    def collect(record: logging.LogRecord) -> bool:
+        collected.append(" ".join(record.getMessage().split())[:160])
+        return False
+
+    log_manager.console_handler.addFilter(collect)
+    try:
+        yield collected
+    finally:
+        log_manager.console_handler.removeFilter(collect)
+
+
+def _gathered(channels: list[Any], log: RepairLog) -> NamedArrays:
     timed = [channel for channel in channels if "wf_increment" in channel.properties]
     found = NamedArrays({})
     if timed:
@@ -52,7 +78,7 @@ def _gathered(channels: list[Any]) -> tuple[NamedArrays, RepairLog]:
         found.arrays[channel.name] = np.asarray(channel[:])
         unit = next((channel.properties[key] for key in UNIT_PROPERTIES if key in channel.properties), "")
         found.units[channel.name] = str(unit)
-    return found, log
+    return found
 
 
 def _timing(properties: dict[str, Any]) -> tuple[Any, ...]:

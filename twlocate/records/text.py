@@ -7,6 +7,7 @@ from twlocate.records.repairs import GUESS, LIKELY, RepairLog
 CODE_PAGES = ("cp1251", "cp866", "gb18030", "cp1252", "cp850", "shift_jis", "euc_kr", "big5")
 """The legacy code pages of relays and analysts' machines; fewer candidates make short texts easier to tell."""
 
+UNREADABLE = "\ufffd"
 DETECTION_BYTES = 8192
 """Enough text to tell a code page by; detection costs by the byte."""
 
@@ -36,6 +37,10 @@ def decode(data: bytes, where: str, log: RepairLog) -> str:
         return data.decode("utf-8")
     except UnicodeDecodeError:
         pass
+    damaged = data.decode("utf-8", errors="replace")
+    if 0 < damaged.count(UNREADABLE) <= sum(not letter.isascii() for letter in damaged) // 2:
+        log.add("bytes that are not UTF-8 in a text that else is", where, "shown as unreadable", LIKELY)
+        return damaged
     encoding, confidence = detected_code_page(data)
     log.add("text is not UTF-8", where, f"read as {encoding}", confidence)
     return data.decode(encoding, errors="replace")

@@ -15,7 +15,8 @@ def sample_range(stretch: Stretch, from_s: float, to_s: float) -> tuple[int, int
         stop = int(np.searchsorted(stretch.stamps_s, to_s, "right"))
     else:
         first = int(np.ceil((from_s - stretch.start_s) * stretch.rate_hz - 1e-6))
-        stop = int(np.floor((to_s - stretch.start_s) * stretch.rate_hz + 1e-6)) + 1
+        last = np.floor((min(to_s, stretch.start_s + stretch.span_s) - stretch.start_s) * stretch.rate_hz + 1e-6)
+        stop = int(last) + 1
     return max(0, min(first, stretch.count)), max(0, min(stop, stretch.count))
 
 

@@ -1,30 +1,37 @@
-"""What is in recordings: facts, then tables or JSON."""
+"""What is in recordings, as facts: the common ground of the tables and of the JSON."""
 
 import json
+from collections.abc import Sequence
 from dataclasses import asdict
 from typing import Any
 
 import numpy as np
-from rich.console import Console, Group, RenderableType
-from rich.table import Table
-from rich.text import Text
+from numpy.typing import NDArray
 
-from twlocate.records import Channel, Record, Repair, Stretch
+from twlocate.records import Channel, Record, StatusChannel, Stretch
 
 CAUTION = (
-    "A record tells when waves passed a recorder, no more: check channel names, polarity and clock against the "
-    "station's own papers before you rely on it."
+    "A record tells when a wave passed a recorder, and no more. Check channel names, polarity, ratios and clock "
+    "against the station's own papers before anyone acts on it."
 )
+NS = 1e-9
+DIGITS = ((10**9, 0), (10**6, 3), (10**3, 6), (1, 9))
+"""Resolution in nanoseconds, and the digits of a second that it needs."""
 
 
-def utc_text(ns: int | None) -> str:
-    """Return UTC nanoseconds since 1970-01-01 as ISO 8601 with nine digits, or a dash."""
-    return "-" if ns is None else f"{np.datetime64(ns, 'ns')}Z"
+def utc_text(ns: int | None, resolution_ns: int | None = None) -> str | None:
+    """Return UTC nanoseconds since 1970-01-01 in ISO 8601, to the digits that `resolution_ns` supports."""
+    if ns is None:
+        return None
+    digits = next(digits for size, digits in DIGITS if size <= max(1, resolution_ns or 1))
+    whole, _, fraction = str(np.datetime64(ns, "ns")).partition(".")
+    return f"{whole}.{fraction[:digits]}Z" if digits else f"{whole}Z"
 
 
 def channel_facts(channel: Channel) -> dict[str, Any]:
-    """Return the facts of one channel, ready for JSON."""
-    known = channel.samples[~np.isnan(channel.samples)]
+    """Return the facts of one analog channel."""
+    missing = channel.missing
+    known = channel.samples[~np.isnan(channel.samples)] if missing else channel.samples
     return {
         "name": channel.name,
         "phase": channel.phase,
@@ -33,16 +40,39 @@ def channel_facts(channel: Channel) -> dict[str, Any]:
         "greatest": float(known.max()) if known.size else None,
         "low": channel.low,
         "high": channel.high,
+        "at_limit": at_limit(channel, known),
         "step": channel.step,
         "side": channel.side,
         "ratio": channel.ratio,
         "skew_s": channel.skew_s,
-        "missing": channel.missing,
+        "missing": missing,
     }
 
 
+def at_limit(channel: Channel, known: NDArray[np.float64]) -> int | None:
+    """Return how many samples stand at an end of the converter's range, half a step allowed; None where not known."""
+    if channel.low is None or channel.high is None:
+        return None
+    margin = 0.5 * (channel.step or 0.0)
+    return int(np.count_nonzero((known <= channel.low + margin) | (known >= channel.high - margin)))
+
+
+def status_facts(channel: StatusChannel, record: Record) -> dict[str, Any]:
+    """Return the facts of one status channel: its changes as (seconds from the start, new state)."""
+    index = np.flatnonzero(np.diff(channel.states)) + 1
+    changes = [[time_of(record, int(i)), int(channel.states[i])] for i in index]
+    return {"name": channel.name, "normal": channel.normal, "changes": changes}
+
+
+def time_of(record: Record, sample: int) -> float:
+    """Return when a sample was taken, in seconds from the record's start."""
+    stretch = next(stretch for stretch in record.stretches if sample < stretch.stop)
+    within = sample - stretch.first
+    return float(stretch.start_s + within / stretch.rate_hz if stretch.stamps_s is None else stretch.stamps_s[within])
+
+
 def stretch_facts(stretch: Stretch) -> dict[str, Any]:
-    """Return the facts of one stretch, ready for JSON."""
+    """Return the facts of one stretch."""
     return {
         "first": stretch.first,
         "count": stretch.count,
@@ -60,80 +90,48 @@ def record_facts(record: Record) -> dict[str, Any]:
         "format": record.format,
         "station": record.station,
         "device": record.device,
-        "start": None if record.start_ns is None else utc_text(record.start_ns),
+        "start": utc_text(record.start_ns, record.resolution_ns),
         "start_ns": record.start_ns,
         "resolution_ns": record.resolution_ns,
+        "end_s": end_s(record),
         "trigger_s": record.trigger_s,
         "line_frequency_hz": record.line_frequency_hz,
         "samples": record.n_samples,
         "clock": asdict(record.clock),
         "stretches": [stretch_facts(stretch) for stretch in record.stretches],
         "channels": [channel_facts(channel) for channel in record.channels],
-        "status": [{"name": c.name, "normal": c.normal, "changes": changes(c.states)} for c in record.status],
+        "status": [status_facts(channel, record) for channel in record.status],
         "repairs": [asdict(repair) for repair in record.repairs],
     }
 
 
-def changes(states: np.ndarray) -> int:
-    """Return how often a status channel changes."""
-    return int(np.count_nonzero(np.diff(states)))
+def end_s(record: Record) -> float:
+    """Return the time of the last sample, in seconds from the record's start."""
+    return max(stretch.start_s + stretch.span_s for stretch in record.stretches)
 
 
-def inspection_json(records: list[Record], faults: list[str]) -> str:
-    """Return everything about `records`, and the `faults` of files that could not be read, as JSON."""
-    facts = {"records": [record_facts(record) for record in records], "errors": faults, "cautions": [CAUTION]}
-    return json.dumps(facts, indent=2, ensure_ascii=False, allow_nan=False)
+def overlap_facts(facts: Sequence[dict[str, Any]]) -> dict[str, Any] | None:
+    """Return the span that all records with an absolute time share, or None where fewer than two have one.
 
-
-def print_inspection(records: list[Record]) -> None:
-    """Print a table for each record."""
-    console = Console(highlight=False)
-    for record in records:
-        console.print(record_panel(record_facts(record)))
-    if records:
-        console.print(Text(CAUTION, style="italic"))
-
-
-def record_panel(facts: dict[str, Any]) -> Group:
-    """Return what is shown of one record."""
-    head = Table.grid(padding=(0, 2))
-    for label, value in _head_rows(facts):
-        head.add_row(label, Text(value))
-    parts: list[RenderableType] = [Text(facts["file"], style="bold"), head, _channel_table(facts["channels"])]
-    parts += [_repair_table([Repair(**repair) for repair in facts["repairs"]])] if facts["repairs"] else []
-    return Group(*parts, Text(""))
-
-
-def _head_rows(facts: dict[str, Any]) -> list[tuple[str, str]]:
-    clock = facts["clock"]
-    u_text = "not stated" if clock["u_s"] is None else f"{clock['u_s']:.3g} s standard uncertainty"
-    return [
-        ("format", facts["format"]),
-        ("station", f"{facts['station']}  {facts['device']}"),
-        ("start", f"{utc_text(facts['start_ns'])}  in steps of {facts['resolution_ns']} ns"),
-        ("clock", f"{'usable' if clock['usable'] else 'NOT usable'}, {u_text}"),
-        *(("", note) for note in clock["notes"]),
-        *(("stretch", _stretch_text(stretch)) for stretch in facts["stretches"]),
-        ("status", f"{len(facts['status'])} channels, {sum(1 for c in facts['status'] if c['changes'])} change"),
+    ``span_s`` is negative where they miss one another: by so much.
+    """
+    spans = [
+        (f["start_ns"] + round(f["stretches"][0]["start_s"] / NS), f["start_ns"] + round(f["end_s"] / NS))
+        for f in facts
+        if f["start_ns"] is not None
     ]
+    if len(spans) < 2:
+        return None
+    from_ns, to_ns = max(start for start, _ in spans), min(end for _, end in spans)
+    return {"from_ns": from_ns, "to_ns": to_ns, "span_s": (to_ns - from_ns) * NS, "records": len(spans)}
 
 
-def _stretch_text(stretch: dict[str, Any]) -> str:
-    even = "" if stretch["even"] else " (uneven, by the stamps)"
-    place = f"{stretch['count']} samples from {stretch['start_s']:.9g} s over {stretch['span_s']:.9g} s"
-    return f"{place} at {stretch['rate_hz']:.9g} Hz{even}"
+def inspection_facts(records: Sequence[Record], faults: Sequence[str]) -> dict[str, Any]:
+    """Return everything about `records`, and the `faults` of files that could not be read."""
+    facts = [record_facts(record) for record in records]
+    return {"records": facts, "overlap": overlap_facts(facts), "errors": list(faults), "cautions": [CAUTION]}
 
 
-def _channel_table(channels: list[dict[str, Any]]) -> Table:
-    table = Table("channel", "unit", "least", "greatest", "step", "missing", "side")
-    for c in channels:
-        numbers = ["-" if c[key] is None else f"{c[key]:.6g}" for key in ("least", "greatest", "step")]
-        table.add_row(Text(c["name"]), Text(c["unit"]), *numbers, str(c["missing"]), c["side"])
-    return table
-
-
-def _repair_table(repairs: list[Repair]) -> Table:
-    table = Table("departure from the format", "where", "assumed", "how sure")
-    for repair in repairs:
-        table.add_row(Text(repair.what), Text(repair.where), Text(repair.assumed), repair.confidence)
-    return table
+def inspection_json(facts: dict[str, Any]) -> str:
+    """Return the facts as JSON."""
+    return json.dumps(facts, indent=2, ensure_ascii=False, allow_nan=False)

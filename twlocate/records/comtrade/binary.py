@@ -1,21 +1,24 @@
 """The binary DAT forms: rows of number, stamp, analog words and packed status bits, little-endian (C37.111-2013)."""
 
+from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
-from pathlib import Path
 
 import numpy as np
 from numpy.typing import NDArray
 
 from twlocate.arrays import FloatArray
+from twlocate.errors import RecordError
+from twlocate.records.comtrade.container import Parts
+from twlocate.records.comtrade.scaling import Scaling, scale_block
 from twlocate.records.comtrade.timeline import NO_STAMP
 
-BLOCK_BYTES = 1 << 20
+BLOCK_BYTES = 1 << 19
 """Rows are scaled in blocks of about this size, so that a block stays in the processor's cache."""
 
+STAMP_OFFSET = 4
+"""Of the stamp in its row: the sample number comes first."""
 MISSING_STAMP = 0xFFFFFFFF
 ANALOG_TYPES = {"BINARY": "<i2", "BINARY32": "<i4", "FLOAT32": "<f4"}
-MISSING = {"BINARY": -(2**15), "BINARY32": -(2**31), "FLOAT32": float(np.finfo(np.float32).min)}
-"""Missing-value codes: 8000 hex, 80000000 hex, and the most negative single-precision number."""
 
 
 def row_type(file_type: str, n_analog: int, n_status: int) -> np.dtype[np.void]:
@@ -33,77 +36,72 @@ def row_type(file_type: str, n_analog: int, n_status: int) -> np.dtype[np.void]:
 
 @dataclass(frozen=True)
 class BinaryRows:
-    """Rows of a binary DAT, seen through a memory map: nothing is read before it is asked for."""
+    """Rows of a binary DAT, read block by block when asked for; a file cut short meanwhile is an error, not a crash."""
 
-    rows: NDArray[np.void]
+    parts: Parts
+    layout: np.dtype[np.void]
     file_type: str
-    tail: bytes
-    """What follows the last whole row."""
 
     def __len__(self) -> int:
         """Return the number of whole rows."""
-        return len(self.rows)
+        return self.parts.length // self.layout.itemsize
 
-    def numbers(self) -> NDArray[np.int64]:
+    def tail(self) -> bytes:
+        """Return what follows the last whole row."""
+        size = self.parts.length % self.layout.itemsize
+        with self.parts.data_path.open("rb") as file:
+            file.seek(self.parts.offset + self.parts.length - size)
+            return file.read(size)
+
+    def blocks(self, first: int, stop: int) -> Iterator[tuple[slice, NDArray[np.void]]]:
+        """Yield the rows `first` to `stop` in blocks, each with its place counted from `first`."""
+        most = max(1, BLOCK_BYTES // self.layout.itemsize)
+        with self.parts.data_path.open("rb") as file:
+            file.seek(self.parts.offset + first * self.layout.itemsize)
+            for start in range(0, stop - first, most):
+                wanted = min(most, stop - first - start)
+                rows = np.fromfile(file, self.layout, wanted)
+                if len(rows) < wanted:
+                    raise RecordError(f"the DAT became shorter while read: row {first + start + len(rows)} is gone")
+                yield slice(start, start + wanted), rows
+
+    def stamp_blocks(self) -> Iterator[tuple[slice, NDArray[np.int64]]]:
+        """Yield all stamps in ticks in blocks, `NO_STAMP` where missing."""
+        return ((place, _ticks(rows)) for place, rows in self.blocks(0, len(self)))
+
+    def stamps_at(self, rows: Sequence[int]) -> list[int]:
+        """Return the stamps of a few rows in ticks, `NO_STAMP` where missing."""
+        stamps = []
+        with self.parts.data_path.open("rb", buffering=0) as file:
+            for row in rows:
+                file.seek(self.parts.offset + row * self.layout.itemsize + STAMP_OFFSET)
+                stamps.append(int.from_bytes(file.read(4), "little"))
+        return [NO_STAMP if stamp == MISSING_STAMP else stamp for stamp in stamps]
+
+    def sample_numbers(self) -> NDArray[np.int64]:
         """Return the sample numbers."""
-        return self.rows["number"].astype(np.int64)
+        return np.concatenate([rows["number"].astype(np.int64) for _, rows in self.blocks(0, len(self))])
 
-    def stamps(self) -> NDArray[np.int64]:
-        """Return the stamps in ticks, `NO_STAMP` where missing."""
-        stamps = self.rows["stamp"].astype(np.int64)
-        stamps[stamps == MISSING_STAMP] = NO_STAMP
-        return stamps
+    def samples(self, first: int, stop: int, scaling: Scaling, n_status: int) -> tuple[FloatArray, NDArray[np.uint8]]:
+        """Return readings and states of rows `first` to `stop`, each of shape (channels, stop - first).
 
-    def analog(self, first: int, stop: int, a: FloatArray, b: FloatArray, _: FloatArray) -> FloatArray:
-        """Return ``a * count + b`` of rows `first` to `stop`, NaN where missing.
-
-        Parameters
-        ----------
-        first, stop
-            Range of rows.
-        a, b
-            Scale and offset, shape (channels,).
-
-        Returns
-        -------
-        ndarray, shape (channels, stop - first)
+        Bit 0 of the first status word is channel 1.
         """
-        out = np.empty((len(a), stop - first))
-        block = max(1, BLOCK_BYTES // self.rows.dtype.itemsize)
-        for start in range(first, stop, block):
-            counts = self.rows["analog"][start : min(start + block, stop)].T
-            view = out[:, start - first : start - first + counts.shape[1]]
-            scale_block(counts, a, b, MISSING[self.file_type], view)
-        return out
-
-    def status(self, first: int, stop: int, n_status: int) -> NDArray[np.uint8]:
-        """Return the states of rows `first` to `stop`, shape (channels, rows); bit 0 of word 1 is channel 1."""
-        out = np.empty((n_status, stop - first), np.uint8)
-        block = max(1, BLOCK_BYTES // self.rows.dtype.itemsize)
-        for start in range(first, stop, block):
-            words = np.ascontiguousarray(self.rows["status"][start : min(start + block, stop)])
-            bits = np.unpackbits(words.view(np.uint8), axis=1, count=n_status, bitorder="little")
-            out[:, start - first : start - first + len(words)] = bits.T
-        return out
+        readings = np.empty((len(scaling.a), stop - first))
+        states = np.empty((n_status, stop - first), np.uint8)
+        for place, rows in self.blocks(first, stop):
+            scale_block(np.ascontiguousarray(rows["analog"].T), scaling, readings[:, place])
+            words = np.ascontiguousarray(rows["status"])
+            states[:, place] = np.unpackbits(words.view(np.uint8), axis=1, count=n_status, bitorder="little").T
+        return readings, states
 
 
-def scale_block(counts: NDArray[np.generic], a: FloatArray, b: FloatArray, missing: float, out: FloatArray) -> None:
-    """Write ``a * counts + b`` into `out`, NaN where a count equals `missing`; all of shape (channels, rows)."""
-    np.multiply(counts, a[:, None], out=out, dtype=np.float64, casting="unsafe")
-    out += b[:, None]
-    gone = counts == missing
-    if gone.any():
-        out[gone] = np.nan
+def _ticks(rows: NDArray[np.void]) -> NDArray[np.int64]:
+    ticks = rows["stamp"].astype(np.int64)
+    ticks[ticks == MISSING_STAMP] = NO_STAMP
+    return ticks
 
 
-def open_binary(path: Path, offset: int, length: int, file_type: str, n_analog: int, n_status: int) -> BinaryRows:
-    """Map `length` bytes from `offset` of a file as binary rows."""
-    layout = row_type(file_type, n_analog, n_status)
-    count = length // layout.itemsize
-    if count == 0:
-        return BinaryRows(np.empty(0, layout), file_type, b"")
-    rows = np.memmap(path, layout, mode="r", offset=offset, shape=(count,))
-    with path.open("rb") as file:
-        file.seek(offset + count * layout.itemsize)
-        tail = file.read(min(length - count * layout.itemsize, 4096))
-    return BinaryRows(rows, file_type, tail)
+def open_binary(parts: Parts, file_type: str, n_analog: int, n_status: int) -> BinaryRows:
+    """Return the samples of a record as binary rows; nothing is read yet."""
+    return BinaryRows(parts, row_type(file_type, n_analog, n_status), file_type)

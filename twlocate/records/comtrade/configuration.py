@@ -13,7 +13,11 @@ EDITIONS = (1991, 1999, 2013)
 FILE_TYPES = ("ASCII", "BINARY", "BINARY32", "FLOAT32")
 FULL_ANALOG_FIELDS = 13
 SHORT_ANALOG_FIELDS = 10
-MAX_CHANNELS = 999_999
+MAX_SCALE = 1e30
+LARGEST = 1e40
+"""No field of a CFG is larger: beyond the range of single precision."""
+MIN_RATE_HZ, MAX_RATE_HZ = 1e-9, 1e12
+MAX_LAST = 1e18
 
 
 @dataclass(frozen=True)
@@ -206,8 +210,8 @@ def _analog_line(lines: Lines, log: RepairLog) -> AnalogLine:
 
 
 def _scale(fields: list[str], where: str, log: RepairLog) -> tuple[float, float]:
-    if not NUMBER.fullmatch(fields[5]):
-        raise RecordError(f"{where} has the multiplier {fields[5][:20]!r}; without a number the channel has no scale")
+    if not NUMBER.fullmatch(fields[5]) or abs(float(fields[5])) > MAX_SCALE:
+        raise RecordError(f"{where}: the multiplier {fields[5][:20]!r} is no number up to {MAX_SCALE:g}")
     a = float(fields[5])
     if a == 0.0:
         log.add("multiplier 0", where, "kept: the channel is constant", SURE)
@@ -220,7 +224,7 @@ def _ratio(text: str) -> float | None:
 
 def _number_or(text: str, default: float, name: str, where: str, log: RepairLog) -> float:
     """Return a number; a blank or unreadable one is `default`, with a repair."""
-    if NUMBER.fullmatch(text):
+    if NUMBER.fullmatch(text) and abs(float(text)) <= LARGEST:
         return float(text)
     fault = f"{name} {text[:20]!r}" if text else f"blank {name}"
     log.add(fault, where, "unknown" if default != default else f"taken as {default:g}", LIKELY)
@@ -265,7 +269,10 @@ def _rate_line(lines: Lines) -> RateLine:
     fields = _fields(lines.take("a sampling rate"))
     if len(fields) < 2 or not NUMBER.fullmatch(fields[0]) or not NUMBER.fullmatch(fields[1]):
         raise RecordError(f"{lines.where} is {','.join(fields)[:40]!r}; a rate and its last sample belong there")
-    return RateLine(float(fields[0]), int(float(fields[1])))
+    rate_hz, last = float(fields[0]), float(fields[1])
+    if (rate_hz and not MIN_RATE_HZ <= rate_hz <= MAX_RATE_HZ) or not 0.0 <= last <= MAX_LAST:
+        raise RecordError(f"{lines.where}: {rate_hz:g} Hz up to sample {last:g} is no sampling rate")
+    return RateLine(rate_hz, int(last))
 
 
 def _file_type(lines: Lines, log: RepairLog) -> str:

@@ -13,6 +13,7 @@ SECTION = re.compile(
     re.IGNORECASE | re.MULTILINE,
 )
 STANDARD_SECTION = re.compile(rb"^--- file type: ", re.IGNORECASE)
+HEAD_BYTES = 1 << 20
 COMPANIONS = (".hdr", ".inf")
 
 
@@ -57,18 +58,29 @@ def _sibling(path: Path, suffix: str) -> Path:
 
 
 def _cff_parts(path: Path, log: RepairLog) -> Parts:
-    content = path.read_bytes()
-    sections = list(SECTION.finditer(content))
+    head = _head_to_data(path)
+    sections = list(SECTION.finditer(head))
     starts = {match[1].upper(): match for match in reversed(sections)}
-    if b"CFG" not in starts or b"DAT" not in starts:
-        raise RecordError("no CFG and DAT section headers such as '--- file type: CFG ---'")
-    if not all(STANDARD_SECTION.match(match[0]) for match in sections):
-        log.add("section headers not as the standard writes them", "CFF", "read as section headers", SURE)
+    if b"CFG" not in starts or b"DAT" not in starts or starts[b"DAT"].start() < starts[b"CFG"].start():
+        raise RecordError("no CFG and then DAT section header such as '--- file type: CFG ---'")
     cfg, data = starts[b"CFG"], starts[b"DAT"]
-    ends = [match.start() for match in sections if match.start() > cfg.start()]
-    length = len(content) - data.end()
-    stated = int(data[3]) if data[3] else None
-    if stated is not None and stated != length:
+    before_data = [match for match in sections if match.start() <= data.start()]
+    if not all(STANDARD_SECTION.match(match[0]) for match in before_data):
+        log.add("section headers not as the standard writes them", "CFF", "read as section headers", SURE)
+    end = min(match.start() for match in sections if match.start() > cfg.start())
+    length = path.stat().st_size - data.end()
+    stated = int(data[3]) if data[3] else length
+    if stated != length:
         log.add(f"DAT section of {length} bytes, {stated} stated", "CFF", "what is there is read", LIKELY)
-        length = min(length, stated)
-    return Parts(path, content[cfg.end() : min(ends)], path, data.end(), length, (data[2] or b"").decode().upper())
+    return Parts(path, head[cfg.end() : end], path, data.end(), min(length, stated), (data[2] or b"").decode().upper())
+
+
+def _head_to_data(path: Path) -> bytes:
+    """Return the file up to its DAT section header, or all of it where there is none."""
+    head = b""
+    with path.open("rb") as file:
+        while block := file.read(HEAD_BYTES):
+            head += block
+            if any(match[1].upper() == b"DAT" for match in SECTION.finditer(head)):
+                break
+    return head

@@ -1,6 +1,6 @@
 """A COMTRADE record from its parts."""
 
-from dataclasses import dataclass
+import math
 from pathlib import Path
 
 import numpy as np
@@ -8,12 +8,14 @@ from numpy.typing import NDArray
 
 from twlocate.arrays import FloatArray
 from twlocate.errors import RecordError
-from twlocate.records.comtrade.ascii import AsciiRows, parse_ascii
+from twlocate.records.assembling import note_missing
+from twlocate.records.comtrade.ascii import FILLING, AsciiRows, parse_ascii
 from twlocate.records.comtrade.binary import ANALOG_TYPES, BinaryRows, open_binary
 from twlocate.records.comtrade.clock import stated_clock
 from twlocate.records.comtrade.configuration import AnalogLine, Configuration, parse_configuration
 from twlocate.records.comtrade.container import COMPANIONS, Parts, find_parts
 from twlocate.records.comtrade.dates import utc_ns
+from twlocate.records.comtrade.scaling import Scaling, scaling_of
 from twlocate.records.comtrade.timeline import Timeline, timeline
 from twlocate.records.record import Channel, Clock, Record, StatusChannel
 from twlocate.records.repairs import GUESS, LIKELY, SURE, RepairLog
@@ -22,16 +24,10 @@ from twlocate.records.windows import windowed_stretches
 
 NUMBER_SHARE = 0.9
 """Rows numbered one after another in at least this share tell that the row layout is right."""
-
-
-@dataclass(frozen=True)
-class Scaling:
-    """Scale, offset and count limits of the analog channels, arrays of shape (channels,)."""
-
-    a: FloatArray
-    b: FloatArray
-    low: FloatArray
-    high: FloatArray
+PROBED_ROWS = 64
+HEAD_BYTES = 4096
+NUMBER_TEXT = b"0123456789+-., \t\r\neENnAaIiFf\x1a"
+"""The bytes of which ASCII data is made."""
 
 
 def read_comtrade(path: Path, span: tuple[float, float] | None) -> Record:
@@ -47,10 +43,11 @@ def read_comtrade(path: Path, span: tuple[float, float] | None) -> Record:
     log = RepairLog()
     parts = find_parts(path, log)
     configuration = parse_configuration(decode(parts.cfg, "CFG", log), log)
-    rows = open_rows(parts, configuration, log)
+    file_type = _fitting_type(parts, configuration, log)
+    scaling = scaling_of(configuration.analog, file_type, configuration.edition)
+    rows = _open_rows(parts, file_type, scaling, len(configuration.status), log)
     _check_row_count(len(rows), configuration, log)
-    times = timeline(rows.stamps(), configuration.tick_s, configuration.rates, len(rows), log)
-    scaling = _scaling(configuration.analog)
+    times = timeline(rows, configuration.tick_s, configuration.rates, log, probe_only=span is not None)
     stretches, ranges = windowed_stretches(times.stretches, span) if span else (times.stretches, [(0, len(rows))])
     analog, status = _samples(rows, scaling, len(configuration.status), ranges)
     return Record(
@@ -66,57 +63,55 @@ def read_comtrade(path: Path, span: tuple[float, float] | None) -> Record:
         line_frequency_hz=configuration.line_frequency_hz,
         status=_status(configuration, status),
         clock=_clock(configuration, times, log),
-        repairs=tuple(log.entries),
+        repairs=log.repairs,
         files=tuple(dict.fromkeys((parts.cfg_path, parts.data_path))),
     )
 
 
-def open_rows(parts: Parts, configuration: Configuration, log: RepairLog) -> BinaryRows | AsciiRows:
-    """Open the samples by the stated file type, or by the one the data fits where the stated one does not.
+def _open_rows(parts: Parts, file_type: str, scaling: Scaling, n_status: int, log: RepairLog) -> BinaryRows | AsciiRows:
+    if file_type == "ASCII":
+        with parts.data_path.open("rb") as file:
+            file.seek(parts.offset)
+            return parse_ascii(file, parts.length, scaling, n_status, log)
+    rows = open_binary(parts, file_type, len(scaling.a), n_status)
+    if len(rows) == 0:
+        raise RecordError(f"the DAT has {parts.length} bytes, less than one row of {rows.layout.itemsize}")
+    if tail := rows.tail():
+        stray = not tail.strip(FILLING)
+        assumed = "stray bytes, ignored" if stray else "a row cut short, left out"
+        log.add(f"{len(tail)} bytes after the last whole row", "DAT", assumed, SURE if stray else LIKELY)
+    return rows
+
+
+def _fitting_type(parts: Parts, configuration: Configuration, log: RepairLog) -> str:
+    """Return the stated file type, or the one the data fits where it does not fit the stated one.
 
     Raises
     ------
     RecordError
-        The data fits no file type.
+        There is no data.
     """
-    n_analog, n_status = len(configuration.analog), len(configuration.status)
     stated = configuration.file_type or parts.file_type
-    fitting = _fitting_type(parts, stated, n_analog, n_status)
-    if fitting != stated:
-        log.add(f"file type {stated or 'not stated'}", "CFG", f"the data is {fitting}", LIKELY)
-    if fitting == "ASCII":
-        with parts.data_path.open("rb") as file:
-            file.seek(parts.offset)
-            return parse_ascii(file.read(parts.length), n_analog, n_status, log)
-    rows = open_binary(parts.data_path, parts.offset, parts.length, fitting, n_analog, n_status)
-    if len(rows) == 0:
-        raise RecordError(f"the DAT has {parts.length} bytes, less than one row of {rows.rows.dtype.itemsize}")
-    if rows.tail:
-        stray = not rows.tail.strip(b"\x1a\r\n\0")
-        assumed = "stray bytes, ignored" if stray else "a row cut short, left out"
-        log.add(f"{len(rows.tail)} bytes after the last whole row", "DAT", assumed, SURE if stray else LIKELY)
-    return rows
-
-
-def _fitting_type(parts: Parts, stated: str, n_analog: int, n_status: int) -> str:
-    """Return the stated file type, unless the sample numbers count up only under another one."""
     with parts.data_path.open("rb") as file:
         file.seek(parts.offset)
-        head = file.read(min(parts.length, 4096))
-    if not head.strip():
-        raise RecordError("the DAT is empty")
-    is_text = not head.rstrip(b"\x1a\0").translate(None, b"0123456789+-., \t\r\neENnAaIiFf\x1a")
-    if is_text:
-        return "ASCII"
-    candidates = [stated, *ANALOG_TYPES] if stated in ANALOG_TYPES else list(ANALOG_TYPES)
-    fitting = [name for name in candidates if _numbered(parts, name, n_analog, n_status)]
-    return fitting[0] if fitting else stated or candidates[0]
+        head = file.read(min(parts.length, HEAD_BYTES))
+    if not head.strip(FILLING):
+        raise RecordError("the DAT holds no samples")
+    is_text = not head.rstrip(FILLING).translate(None, NUMBER_TEXT)
+    order = ["ASCII"] if is_text else sorted(ANALOG_TYPES, key=lambda name: name != stated)
+    counts = (len(configuration.analog), len(configuration.status))
+    fitting = next((name for name in order if is_text or _numbered(parts, name, *counts)), stated or order[0])
+    if fitting != configuration.file_type:
+        log.add(f"file type {stated or 'not stated'}", "CFG", f"the data is {fitting}", LIKELY)
+    return fitting
 
 
 def _numbered(parts: Parts, file_type: str, n_analog: int, n_status: int) -> bool:
-    rows = open_binary(parts.data_path, parts.offset, parts.length, file_type, n_analog, n_status)
-    steps = np.diff(rows.rows["number"][:64].astype(np.int64))
-    return len(rows) == 1 or (len(steps) > 0 and float(np.mean(steps == 1)) >= NUMBER_SHARE)
+    """Tell whether the first sample numbers count up when the rows are laid out as `file_type` says."""
+    rows = open_binary(parts, file_type, n_analog, n_status)
+    blocks = rows.blocks(0, min(PROBED_ROWS, len(rows)))
+    steps = [step for _, block in blocks for step in np.diff(block["number"].astype(np.int64)).tolist()]
+    return len(rows) == 1 or (len(steps) > 0 and steps.count(1) >= NUMBER_SHARE * len(steps))
 
 
 def _check_row_count(rows: int, configuration: Configuration, log: RepairLog) -> None:
@@ -126,39 +121,44 @@ def _check_row_count(rows: int, configuration: Configuration, log: RepairLog) ->
         log.add(f"{rows} rows, {declared} declared", "DAT", assumed, SURE)
 
 
-def _scaling(analog: tuple[AnalogLine, ...]) -> Scaling:
-    columns = np.array([(line.a, line.b, line.low, line.high) for line in analog], dtype=np.float64).reshape(-1, 4)
-    return Scaling(*np.ascontiguousarray(columns.T))
-
-
 def _samples(
     rows: BinaryRows | AsciiRows, scaling: Scaling, n_status: int, ranges: list[tuple[int, int]]
 ) -> tuple[FloatArray, NDArray[np.uint8]]:
     """Return readings and states of the rows in `ranges`, shape (channels, rows)."""
-    analog = [rows.analog(first, stop, scaling.a, scaling.b, scaling.high) for first, stop in ranges]
-    status = [rows.status(first, stop, n_status) for first, stop in ranges]
-    return (analog[0], status[0]) if len(ranges) == 1 else (np.hstack(analog), np.hstack(status))
+    pieces = [rows.samples(first, stop, scaling, n_status) for first, stop in ranges]
+    if len(pieces) == 1:
+        return pieces[0]
+    readings, states = zip(*pieces, strict=True)
+    return np.hstack(readings), np.hstack(states)
 
 
-def _channels(lines: tuple[AnalogLine, ...], analog: FloatArray, log: RepairLog) -> tuple[Channel, ...]:
-    """Return the analog channels, the count of missing samples of each in the log."""
-    channels = tuple(_channel(line, samples) for line, samples in zip(lines, analog, strict=True))
-    for channel in channels:
-        if channel.missing:
-            log.add(f"{channel.missing} samples missing", f"channel {channel.name!r}", "left out (NaN)", SURE)
+def _channels(lines: tuple[AnalogLine, ...], readings: FloatArray, log: RepairLog) -> tuple[Channel, ...]:
+    """Return the analog channels; missing samples and ranges that cannot be true go to the log."""
+    channels = tuple(_channel(line, samples, log) for line, samples in zip(lines, readings, strict=True))
+    note_missing(channels, log)
     return channels
 
 
-def _channel(line: AnalogLine, samples: FloatArray) -> Channel:
-    ends = sorted((line.a * line.low + line.b, line.a * line.high + line.b))
-    known = all(np.isfinite(ends)) and ends[0] < ends[1]
-    ratio = line.primary / line.secondary if line.primary and line.secondary else None
+def _channel(line: AnalogLine, samples: FloatArray, log: RepairLog) -> Channel:
+    low, high = _converter_range(line, samples, log)
     return Channel(
         name=line.name, unit=line.unit, samples=samples, phase=line.phase, skew_s=line.skew_us * 1e-6,
-        step=abs(line.a) or None, offset=line.b,
-        low=ends[0] if known else None, high=ends[1] if known else None,
-        side={"P": "primary", "S": "secondary"}.get(line.side, ""), ratio=ratio,
+        step=abs(line.a) or None, offset=line.b, low=low, high=high,
+        side={"P": "primary", "S": "secondary"}.get(line.side, ""),
+        ratio=line.primary / line.secondary if line.primary and line.secondary else None,
     )  # fmt: skip
+
+
+def _converter_range(line: AnalogLine, samples: FloatArray, log: RepairLog) -> tuple[float | None, float | None]:
+    """Return the least and greatest reading the converter can give; None each where the stated range is not that."""
+    low, high = sorted((line.a * line.low + line.b, line.a * line.high + line.b))
+    if not (math.isfinite(low) and math.isfinite(high) and low < high):
+        return None, None
+    margin = 0.5 * abs(line.a)
+    if np.fmin.reduce(samples) < low - margin or np.fmax.reduce(samples) > high + margin:
+        log.add("samples beyond the stated range", f"channel {line.name!r}", "the range is not the converter's", LIKELY)
+        return None, None
+    return low, high
 
 
 def _status(configuration: Configuration, states: NDArray[np.uint8]) -> tuple[StatusChannel, ...]:

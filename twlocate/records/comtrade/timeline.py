@@ -6,9 +6,10 @@ tick. So: inside a stretch the rate spaces the samples wherever the stamps agree
 stretch starts is the stamps' word; where the two contradict each other, the stamps win and the repair says so.
 """
 
-from collections.abc import Sequence
+from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, field
 from itertools import pairwise
+from typing import Protocol
 
 import numpy as np
 from numpy.typing import NDArray
@@ -18,7 +19,7 @@ from twlocate.errors import RecordError
 from twlocate.records.comtrade.configuration import RateLine
 from twlocate.records.record import Stretch
 from twlocate.records.repairs import GUESS, LIKELY, SURE, RepairLog
-from twlocate.records.spacing import break_doubts, stretches_by_stamps
+from twlocate.records.spacing import break_doubts, counted, listed, stretches_by_stamps
 
 NO_STAMP = np.iinfo(np.int64).min
 WRAPS = (2**16, 10**6, 2**31, 2**32, 10**9, 10**10)
@@ -27,6 +28,31 @@ NEAR_RATE = 0.02
 """Neighbouring rates within this ratio follow one clock (a recorder locked to the line frequency): one stretch."""
 MAX_BREAKS = 0.25
 """More breaks than this share of the samples are noise of the stamps, not gaps."""
+AGREEMENT_TICKS = 1.5
+"""Stamps this near to those of the rate agree with it: rounded or cut to a whole tick, by either clock."""
+PROBES = 65
+"""Stamps looked at, the last among them, before a window is read by the rate: a gap anywhere moves the last."""
+CONTRADICTION = "the sample stamps contradict the sampling rate"
+
+
+class StampedRows(Protocol):
+    """Rows of any DAT form, as far as their time goes."""
+
+    def __len__(self) -> int:
+        """Return the number of rows."""
+        ...
+
+    def stamp_blocks(self) -> Iterator[tuple[slice, NDArray[np.int64]]]:
+        """Yield all stamps in ticks in blocks with their place, `NO_STAMP` where missing."""
+        ...
+
+    def stamps_at(self, rows: Sequence[int]) -> list[int]:
+        """Return the stamps of a few rows in ticks, `NO_STAMP` where missing."""
+        ...
+
+    def sample_numbers(self) -> NDArray[np.int64]:
+        """Return the sample numbers, `NO_STAMP` where missing."""
+        ...
 
 
 @dataclass
@@ -40,40 +66,70 @@ class Timeline:
 
 
 def timeline(
-    stamps: NDArray[np.int64] | None, tick_s: float, rates: Sequence[RateLine], count: int, log: RepairLog
+    rows: StampedRows, tick_s: float, rates: Sequence[RateLine], log: RepairLog, *, probe_only: bool = False
 ) -> Timeline:
-    """Return when each of `count` samples was taken, time zero at the first.
+    """Return when each sample was taken, time zero at the first.
 
     Parameters
     ----------
-    stamps
-        Stamps in ticks, shape (count,), `NO_STAMP` where missing; None where there are none at all.
+    rows
+        The rows with their stamps.
     tick_s
-        Seconds a tick.
+        Seconds a tick of the stamps.
     rates
         Sampling rates with the number of the last sample of each; empty where the stamps rule.
-    count
-        Number of samples.
     log
         Gets a repair for each contradiction.
+    probe_only
+        Take `PROBES` stamps in line with a single rate as proof for all: for a window of a long file.
 
     Raises
     ------
     RecordError
         Neither stamps nor rates give the samples a time.
     """
-    rates_hz = nominal_rates_hz(rates, count, log)
-    ticks = usable_stamps(stamps, rates_hz, tick_s, log)
+    if len(rates) == 1 and runs_evenly(rows, rates[0].rate_hz, tick_s, probe_only=probe_only):
+        first_s = rows.stamps_at([0])[0] * tick_s
+        return Timeline((Stretch(0, len(rows), 0.0, rates[0].rate_hz),), first_s)
+    rates_hz = nominal_rates_hz(rates, len(rows), log)
+    ticks = usable_stamps(np.concatenate([stamps for _, stamps in rows.stamp_blocks()]), rates_hz, tick_s, log)
     if ticks is None:
-        if rates_hz is None:
-            raise RecordError("there is neither a sampling rate nor a usable stamp: the samples have no time")
-        return Timeline(tuple(_rate_stretches(rates_hz, np.array([0]), np.zeros(1))))
+        return _by_rate_alone(rows, rates_hz, log)
     first_s = float(ticks[0]) * tick_s
     times_s = (ticks - ticks[0]) * tick_s
     if rates_hz is None:
         stretches, doubts = stretches_by_stamps(times_s, tick_s, "DAT", log)
         return Timeline(stretches, first_s, doubts)
     return _weighed(times_s, rates_hz, tick_s, first_s, log)
+
+
+def runs_evenly(rows: StampedRows, rate_hz: float, tick_s: float, *, probe_only: bool) -> bool:
+    """Tell whether every stamp (or every probed one) is where the rate puts it, without a gap or a wrap."""
+    count, first = len(rows), rows.stamps_at([0])[0]
+    if first == NO_STAMP:
+        return False
+    ticks_a_sample = 1.0 / (rate_hz * tick_s)
+    if probe_only:
+        probes = [round(part * (count - 1) / (PROBES - 1)) for part in range(PROBES)]
+        late = (stamp - first - ticks_a_sample * row for stamp, row in zip(rows.stamps_at(probes), probes, strict=True))
+        return all(abs(ticks) <= AGREEMENT_TICKS for ticks in late)
+    places = ((stamps, np.arange(place.start, place.start + len(stamps))) for place, stamps in rows.stamp_blocks())
+    return all(np.all(np.abs(s - (first + ticks_a_sample * index)) <= AGREEMENT_TICKS) for s, index in places)
+
+
+def _by_rate_alone(rows: StampedRows, rates_hz: FloatArray | None, log: RepairLog) -> Timeline:
+    """Return the stretches of a record without stamps; jumps of the sample number are gaps."""
+    if rates_hz is None:
+        raise RecordError("there is neither a sampling rate nor a usable stamp: the samples have no time")
+    jumps = np.diff(rows.sample_numbers()) - 1
+    breaks = np.flatnonzero(jumps > 0) + 1
+    if not len(breaks) or len(breaks) > MAX_BREAKS * len(rates_hz) or np.any(jumps < 0) or np.ptp(rates_hz) > 0.0:
+        return Timeline(tuple(_rate_stretches(rates_hz, np.array([0]), np.zeros(1))))
+    numbers = [int(index) + 1 for index in breaks]
+    log.add("sample numbers jump", f"DAT, before row {listed(numbers)}", "samples missing there: kept as gaps", LIKELY)
+    starts = np.concatenate([[0], breaks]).astype(np.int64)
+    lost = np.concatenate([[0], np.cumsum(jumps[breaks - 1])])
+    return Timeline(tuple(_rate_stretches(rates_hz, starts, (starts + lost) / rates_hz[0])))
 
 
 def nominal_rates_hz(rates: Sequence[RateLine], count: int, log: RepairLog) -> FloatArray | None:
@@ -92,11 +148,9 @@ def nominal_rates_hz(rates: Sequence[RateLine], count: int, log: RepairLog) -> F
 
 
 def usable_stamps(
-    stamps: NDArray[np.int64] | None, rates_hz: FloatArray | None, tick_s: float, log: RepairLog
+    stamps: NDArray[np.int64], rates_hz: FloatArray | None, tick_s: float, log: RepairLog
 ) -> NDArray[np.int64] | None:
-    """Return the stamps without wraps and with single holes bridged, or None where they say nothing."""
-    if stamps is None:
-        return None
+    """Return the stamps without wraps and with holes bridged, or None where they say nothing."""
     known = stamps != NO_STAMP
     if not known.any() or (len(stamps) > 1 and np.ptp(stamps[known]) == 0):
         log.add(
@@ -111,16 +165,22 @@ def usable_stamps(
 def _bridged(
     stamps: NDArray[np.int64], known: NDArray[np.bool_], rates_hz: FloatArray | None, tick_s: float, log: RepairLog
 ) -> NDArray[np.int64]:
-    """Return the stamps with the missing ones put where the rate, or the neighbours, say."""
+    """Return the stamps with the missing ones counted on from the last one known, by the rate.
+
+    Raises
+    ------
+    RecordError
+        There is no rate to count by.
+    """
     missing = int(np.count_nonzero(~known))
-    index = np.arange(len(stamps))
     if rates_hz is None:
-        log.add(f"{missing} stamps missing and no rate", "DAT", "spaced evenly between their neighbours", GUESS)
-        return np.rint(np.interp(index, index[known], stamps[known])).astype(np.int64)
-    log.add(f"{missing} stamps missing", "DAT", "counted on from the neighbours by the sampling rate", LIKELY)
+        raise RecordError(f"{missing} samples have no stamp and there is no sampling rate: they have no time")
+    log.add(f"{counted(missing, 'stamp')} missing", "DAT", "counted on from the last one by the sampling rate", LIKELY)
+    first = int(np.argmax(known))
+    last_known = np.maximum(np.maximum.accumulate(np.where(known, np.arange(len(stamps)), 0)), first)
     elapsed = elapsed_s(rates_hz) / tick_s
-    lag = np.interp(index, index[known], stamps[known] - elapsed[known])
-    return np.where(known, stamps, np.rint(elapsed + lag).astype(np.int64))
+    counted_on = stamps[last_known] + np.rint(elapsed - elapsed[last_known]).astype(np.int64)
+    return np.where(known, stamps, counted_on)
 
 
 def _unwrapped(stamps: NDArray[np.int64], log: RepairLog) -> NDArray[np.int64]:
@@ -131,7 +191,7 @@ def _unwrapped(stamps: NDArray[np.int64], log: RepairLog) -> NDArray[np.int64]:
     wrap = next((wrap for wrap in WRAPS if len(back) and _all_wraps(steps[back], wrap, usual)), None)
     if wrap is None:
         return stamps
-    log.add(f"stamps wrap {len(back)} times at {wrap}", "DAT", "counted on", SURE)
+    log.add(f"stamps wrap {counted(len(back), 'time')} at {wrap}", "DAT", "counted on", SURE)
     steps[back] += wrap
     unwrapped: NDArray[np.int64] = np.cumsum(np.concatenate([stamps[:1], steps]))
     return unwrapped
@@ -150,8 +210,7 @@ def _weighed(times_s: FloatArray, rates_hz: FloatArray, tick_s: float, first_s: 
     breaks = np.flatnonzero(np.abs(steps - steps_s[:-1]) > np.maximum(0.5 * steps_s[:-1], 2.5 * tick_s)) + 1
     if len(breaks) > MAX_BREAKS * len(steps_s):
         log.add("stamps jump about", "DAT", "passed over: the sampling rate gives the time", GUESS)
-        doubt = "the sample stamps contradict the sampling rate"
-        return Timeline(tuple(_rate_stretches(rates_hz, np.array([0]), np.zeros(1))), first_s, [doubt])
+        return Timeline(tuple(_rate_stretches(rates_hz, np.array([0]), np.zeros(1))), first_s, [CONTRADICTION])
     doubts = break_doubts(steps, breaks, "DAT", log)
     starts = np.concatenate([[0], breaks]).astype(np.int64)
     if abs(ratio - 1.0) > 1e-3 and abs(ratio - 1.0) * float(np.median(steps_s)) > 1.001 * tick_s:
@@ -169,7 +228,7 @@ def _stamp_ratio(steps: FloatArray, steps_s: FloatArray, tick_s: float) -> float
     ratios = steps / steps_s[:-1]
     usual = float(np.median(ratios))
     near = np.abs(ratios - usual) <= max(0.5 * abs(usual), 2.5 * tick_s / float(np.median(steps_s)))
-    return float(np.mean(ratios[near]))
+    return float(np.mean(ratios[near])) if near.any() else usual
 
 
 def _misscaled(times_s: FloatArray, rates_hz: FloatArray, ratio: float, first_s: float, log: RepairLog) -> Timeline:
@@ -182,8 +241,7 @@ def _misscaled(times_s: FloatArray, rates_hz: FloatArray, ratio: float, first_s:
         tick_s = float(np.min(np.diff(times_s)[np.diff(times_s) > 0.0])) / 10.0**power
         return _weighed(times_s / 10.0**power, rates_hz, tick_s * 1e-3, first_s, log)
     log.add(f"stamps advance {ratio:.4g} times as fast as the rate", "DAT", "the sampling rate gives the time", GUESS)
-    doubt = "the sample stamps contradict the sampling rate"
-    return Timeline(tuple(_rate_stretches(rates_hz, np.array([0]), np.zeros(1))), first_s, [doubt])
+    return Timeline(tuple(_rate_stretches(rates_hz, np.array([0]), np.zeros(1))), first_s, [CONTRADICTION])
 
 
 def _drift_doubts(
@@ -196,15 +254,21 @@ def _drift_doubts(
     worst = float(drift[np.argmax(np.abs(drift))])
     if abs(worst) <= 2.0 * tick_s:
         return []
-    log.add(
-        f"stamps drift {worst:+.3g} s from the rate over a stretch",
-        "DAT",
-        "steps cut to whole ticks: the rate kept",
-        LIKELY,
-    )
-    if abs(worst) <= float(np.max(1.0 / rates_hz)):
+    kept = "the rate kept" if np.ptp(rates_hz) == 0.0 else "the stamps kept"
+    what = f"stamps drift {worst:+.3g} s from the rate over a stretch"
+    if _cut_to_ticks(times_s, rates_hz, tick_s):
+        log.add(what, "DAT", "every step was cut to whole ticks: the rate kept", LIKELY)
+        return []
+    log.add(what, "DAT", kept, GUESS)
+    if abs(worst) <= 1.0 / float(np.min(rates_hz)):
         return []
     return [f"stamps and sampling rate disagree by up to {abs(worst):.3g} s within the record"]
+
+
+def _cut_to_ticks(times_s: FloatArray, rates_hz: FloatArray, tick_s: float) -> bool:
+    """Tell whether all steps are the one whole number of ticks below the rate's own step."""
+    steps = np.rint(np.diff(times_s) / tick_s)
+    return bool(np.ptp(steps) == 0.0 and np.ptp(rates_hz) == 0.0 and steps[0] == np.floor(1.0 / (rates_hz[0] * tick_s)))
 
 
 def _split(times_s: FloatArray, starts: NDArray[np.int64]) -> list[Stretch]:

@@ -12,15 +12,15 @@ from numpy.typing import NDArray
 
 from twlocate.arrays import FloatArray
 from twlocate.errors import RecordError
-from twlocate.records.comtrade.binary import ANALOG_TYPES, MISSING, row_type
+from twlocate.records.comtrade.binary import ANALOG_TYPES, row_type
 from twlocate.records.comtrade.clock import QUALITY_BOUND_S
 from twlocate.records.comtrade.configuration import FILE_TYPES
+from twlocate.records.comtrade.scaling import MISSING
 from twlocate.records.moments import DAY_NS, SECOND_NS
 from twlocate.records.record import Channel, Clock, Record, StatusChannel
 
 COUNT_LIMIT = {"ASCII": 99_998, "BINARY": 32_767, "BINARY32": 2**31 - 1, "FLOAT32": float(np.finfo(np.float32).max)}
 """Largest count of each file type; the missing-value codes lie outside ±limit."""
-MISSING_ASCII = 99_999
 LAST_STAMP = 0xFFFFFFFE
 """FFFFFFFF means a missing stamp."""
 
@@ -230,7 +230,7 @@ def _binary_rows(
 
 def _ascii_rows(channels: list[Counts], status: tuple[StatusChannel, ...], ticks: NDArray[np.int64], _: str) -> bytes:
     columns = [np.arange(1, len(ticks) + 1), ticks]
-    columns += [np.where(np.isnan(c.counts), MISSING_ASCII, c.counts).astype(np.int64) for c in channels]
+    columns += [np.where(np.isnan(c.counts), MISSING["ASCII"], c.counts).astype(np.int64) for c in channels]
     columns += [channel.states for channel in status]
     rows = np.stack(columns, axis=1).astype(np.int64).tolist()
     return "".join(",".join(map(str, row)) + "\r\n" for row in rows).encode()
