@@ -35,6 +35,9 @@ PULSE_STAYS_UP = 0.4
 STILL_WITHOUT_CLIPPING = 0.5
 """Where more than this share of readings repeat the one before, equal readings tell nothing."""
 
+CLIPPING_REACH = 24
+"""Samples either side of the first front in which clipping is looked for, at least."""
+
 FLAT_TOP = 6
 """This many equal readings at the limit of a channel are taken for clipping."""
 
@@ -283,7 +286,7 @@ def _clipping(signals: _Signals, wave: Wave, picks: Picks) -> Gate:
         return Gate(name, True, "there is no front")
     front = picks.arrivals[0]
     at = round((front.time_s - signals.start_s) * signals.rate_hz)
-    reach = max(8, round(2 * front.rise_s * signals.rate_hz))
+    reach = max(CLIPPING_REACH, round(2 * front.rise_s * signals.rate_hz))
     window = slice(max(at - reach, 0), at + reach)
     clipped = [role for role in wave.weights if _flat_at_limit(signals.by_role[role], window)]
     detail = f"{', '.join(clipped)} at the end of its range" if clipped else "all within their range"
