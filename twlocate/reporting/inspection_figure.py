@@ -48,6 +48,7 @@ def write_inspection_figure(records: Sequence[Record], path: Path) -> None:
         with warnings.catch_warnings():
             warnings.filterwarnings("ignore", "Glyph .* missing")  # a name in letters the font lacks shows as boxes
             inspection_figure(records, panels).savefig(passing, dpi=110)
+        Path(passing).chmod(0o644)
         Path(passing).replace(path)
     finally:
         Path(passing).unlink(missing_ok=True)
