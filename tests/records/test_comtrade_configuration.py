@@ -2,6 +2,7 @@
 
 import dataclasses
 import datetime
+import time
 
 import numpy as np
 import pytest
@@ -153,9 +154,18 @@ def test_time_quality_is_a_bound_and_the_uncertainty_a_rectangle():
     ],
 )
 def test_every_doubt_is_a_note_and_frees_the_clock(quality, leap, doubts, usable, note):
-    clock = stated_clock(quality, leap, 0, doubts)
+    clock = stated_clock(quality, leap, 0, 1e-9, doubts)
     assert clock.usable == usable
     assert any(note in text for text in clock.notes)
+
+
+def test_the_last_digit_of_the_start_counts_too():
+    fine = stated_clock("3", "0", 0, 1e-9, [])
+    coarse = stated_clock("3", "0", 0, 1e-6, [])
+    assert fine.u_s == pytest.approx(1e-7 / np.sqrt(3), rel=1e-3)
+    assert coarse.u_s == pytest.approx(np.hypot(1e-7, 1e-6) / np.sqrt(3))
+    assert coarse.notes[-1] == "the start is given to 1e-06 s, coarser than the clock"
+    assert stated_clock("0", "0", 0, 1e-6, []).u_s is None
 
 
 @pytest.mark.parametrize("file_type", MISSING)
@@ -196,6 +206,15 @@ def test_parts_of_a_single_file_longer_than_one_reading_of_it(tmp_path):
     assert (parts.length, parts.file_type, parts.data_path) == (12, "BINARY32", cff)
     assert parts.cfg.decode().split() == "\r\n".join(PLAIN).split()
     assert not log.repairs
+
+
+def test_a_long_single_file_without_data_is_refused_in_one_pass(tmp_path):
+    cff = tmp_path / "e.cff"
+    cff.write_bytes(b"--- file type: CFG ---\r\n" + b"x" * 20_000_000)
+    started = time.process_time()
+    with pytest.raises(RecordError, match="no CFG and then DAT section header"):
+        find_parts(cff, RepairLog())
+    assert time.process_time() - started < 1.0
 
 
 def test_several_spellings_prefer_the_one_of_the_same_case(tmp_path):

@@ -117,6 +117,7 @@ def test_1991_writes_the_month_first(tmp_path):
         ({"tail": ("BINARY", "1")}, "file type BINARY"),
         ({"tail": ()}, "file type ''"),
         ({"tail": ("ASCII", "1", "\x1a\x1a")}, "Ctrl-Z"),
+        ({"rates": ("0",)}, "no line for the last sample"),
         ({"rates": ("1", "1000,5")}, "8 rows, 5 declared"),
         ({"rates": ("1", "1000,45600")}, "8 rows, 45600 declared"),
         ({"rates": ("2", "1000,8", "1000,8")}, "last samples of the rates do not rise"),
@@ -303,17 +304,21 @@ def test_missing_code_of_1991_only_where_minus_one_is_out_of_range(tmp_path):
     assert [channel.missing for channel in record.channels] == [8, 0]
 
 
+U_4 = np.hypot(1e-6, 1e-6) / np.sqrt(3)
+"""Code 4 bounds the clock to 1 µs; the start of this file is given to 1 µs as well."""
+
+
 @pytest.mark.parametrize(
     ("codes", "u_s", "usable", "offset_s"),
     [
-        (("0,0", "4,0"), 1e-6 / np.sqrt(3), True, 0),
+        (("0,0", "4,0"), U_4, True, 0),
         (("-5h30,-5h30", "9,0"), 0.1 / np.sqrt(3), True, -19800),
         (("+1,+1", "0,0"), None, True, 3600),
         (("x,x", "F,0"), None, False, None),
-        (("0,0", "4,1"), 1e-6 / np.sqrt(3), False, 0),
-        (("0,0", "4,3"), 1e-6 / np.sqrt(3), True, 0),
+        (("0,0", "4,1"), U_4, False, 0),
+        (("0,0", "4,3"), U_4, True, 0),
         (("0,0", "D,0"), None, False, 0),
-        (("late,0", "4,0"), 1e-6 / np.sqrt(3), True, None),
+        (("late,0", "4,0"), U_4, True, None),
         ((), None, True, None),
     ],
 )

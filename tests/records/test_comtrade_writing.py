@@ -103,8 +103,11 @@ def test_an_independent_reader_sees_the_same(tmp_path, file_type):
     np.testing.assert_allclose(other.time, np.arange(90) / 1e6, atol=1e-12)
 
 
-def test_writing_twice_gives_the_same_bytes(tmp_path):
+@pytest.mark.parametrize("code", "123456789AB0F")
+def test_writing_twice_gives_the_same_bytes(tmp_path, code):
     write_comtrade(record_of(COUNTS), tmp_path / "a.cfg")
+    text = (tmp_path / "a.cfg").read_text()
+    (tmp_path / "a.cfg").write_bytes(text.replace("\n3,0\n", f"\n{code},0\n").replace("\n", "\r\n").encode())
     write_comtrade(read(tmp_path / "a.cfg"), tmp_path / "b.cfg")
     for suffix in (".cfg", ".dat"):
         assert (tmp_path / f"a{suffix}").read_bytes() == (tmp_path / f"b{suffix}").read_bytes()

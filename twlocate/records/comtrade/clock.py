@@ -20,7 +20,9 @@ def quality_u_s(code: str) -> float:
     return QUALITY_BOUND_S[code] / math.sqrt(3.0)
 
 
-def stated_clock(quality: str | None, leap_second: str | None, offset_s: int | None, doubts: list[str]) -> Clock:
+def stated_clock(
+    quality: str | None, leap_second: str | None, offset_s: int | None, resolution_s: float, doubts: list[str]
+) -> Clock:
     """Return the clock that the time-quality fields state.
 
     Parameters
@@ -31,10 +33,16 @@ def stated_clock(quality: str | None, leap_second: str | None, offset_s: int | N
         Leap-second indicator: 0 none, 1 added, 2 taken away, 3 unknown; None where the file has none.
     offset_s
         Offset from UTC of the clock the file is stamped by; None where not stated.
+    resolution_s
+        Size of the last digit of the start. Makers round it or cut it, so its error lies within ± one digit and
+        its standard uncertainty is resolution/√3 (GUM 4.3.7 again), added in quadrature.
     doubts
         Whatever else makes the absolute time unusable, one sentence each.
     """
     u_s, usable, notes = _quality(quality)
+    if u_s is not None and resolution_s > u_s:
+        notes.append(f"the start is given to {resolution_s:g} s, coarser than the clock")
+    u_s = u_s if u_s is None else math.hypot(u_s, resolution_s / math.sqrt(3.0))
     if leap_second in ("1", "2"):
         notes.append("a leap second falls inside the record: a second may be counted twice or not at all")
     if leap_second == "3":

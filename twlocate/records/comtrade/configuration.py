@@ -4,7 +4,7 @@ import re
 from dataclasses import dataclass
 
 from twlocate.errors import RecordError
-from twlocate.records.comtrade.dates import read_moment, read_time_code
+from twlocate.records.comtrade.dates import DATE_AND_TIME, read_moment, read_time_code
 from twlocate.records.moments import NUMBER, Moment
 from twlocate.records.repairs import GUESS, LIKELY, SURE, RepairLog
 
@@ -66,7 +66,7 @@ class Configuration:
     line_frequency_hz: float | None
     rates: tuple[RateLine, ...]
     """Empty where the file declares none: the stamps then rule."""
-    declared_rows: int
+    declared_rows: int | None
     start: Moment | None
     trigger: Moment | None
     file_type: str
@@ -109,6 +109,11 @@ class Lines:
             raise RecordError(f"the CFG ends after line {self.taken}; {holds} should follow")
         self.taken += 1
         return self.lines[self.taken - 1]
+
+    @property
+    def next_is_a_date(self) -> bool:
+        """Whether the line to come is a date and time."""
+        return bool(self.left) and DATE_AND_TIME.fullmatch(self.lines[self.taken]) is not None
 
     def take_or(self, default: str) -> str:
         """Return the next line, or `default` past the end."""
@@ -249,7 +254,7 @@ def _optional_number(line: str, where: str, log: RepairLog) -> float | None:
     return None
 
 
-def _rates(lines: Lines, log: RepairLog) -> tuple[tuple[RateLine, ...], int]:
+def _rates(lines: Lines, log: RepairLog) -> tuple[tuple[RateLine, ...], int | None]:
     """Return the rate lines (none where the stamps rule) and the declared number of rows."""
     text = lines.take("the number of rates").strip().rstrip(",")
     if not text.isdecimal() or len(text) > 6:
@@ -257,6 +262,9 @@ def _rates(lines: Lines, log: RepairLog) -> tuple[tuple[RateLine, ...], int]:
     count = int(text)
     if count > lines.left:
         raise RecordError(f"{lines.where} declares {count} sampling rates, but only {lines.left} lines follow")
+    if count == 0 and lines.next_is_a_date:
+        log.add("no line for the last sample", lines.where, "all rows are read", SURE)
+        return (), None
     read = [_rate_line(lines) for _ in range(max(count, 1))]
     rates = tuple(rate for rate in read if rate.rate_hz > 0.0)
     if len(rates) < count:

@@ -1,6 +1,7 @@
 """A COMTRADE record from its parts."""
 
 import math
+from dataclasses import replace
 from pathlib import Path
 
 import numpy as np
@@ -116,7 +117,7 @@ def _numbered(parts: Parts, file_type: str, n_analog: int, n_status: int) -> boo
 
 def _check_row_count(rows: int, configuration: Configuration, log: RepairLog) -> None:
     declared = configuration.declared_rows
-    if rows != declared:
+    if declared is not None and rows != declared:
         assumed = "only what is there is read" if rows < declared else "all rows kept"
         log.add(f"{rows} rows, {declared} declared", "DAT", assumed, SURE)
 
@@ -190,7 +191,12 @@ def _clock(configuration: Configuration, times: Timeline, log: RepairLog) -> Clo
     if configuration.start is None:
         doubts.append("no start time")
     doubts += _first_stamp_doubts(configuration, times, log)
-    return stated_clock(configuration.time_quality, configuration.leap_second, configuration.time_offset_s, doubts)
+    resolution_s = configuration.start.resolution_ns * 1e-9 if configuration.start else 0.0
+    stated = (configuration.time_quality, configuration.leap_second, configuration.time_offset_s)
+    clock = stated_clock(*stated, resolution_s, doubts)
+    if configuration.edition > 1991:
+        return clock
+    return replace(clock, notes=(*clock.notes, "dates of 1991 put the month first; some makers put the day first"))
 
 
 def _first_stamp_doubts(configuration: Configuration, times: Timeline, log: RepairLog) -> list[str]:
