@@ -304,8 +304,8 @@ def test_missing_code_of_1991_only_where_minus_one_is_out_of_range(tmp_path):
     assert [channel.missing for channel in record.channels] == [8, 0]
 
 
-U_4 = np.hypot(1e-6, 1e-6) / np.sqrt(3)
-"""Code 4 bounds the clock to 1 µs; the start of this file is given to 1 µs as well."""
+U_4 = 1e-6 / np.sqrt(3)
+"""Code 4 bounds the clock to 1 µs: rectangular, GUM 4.3.7."""
 
 
 @pytest.mark.parametrize(

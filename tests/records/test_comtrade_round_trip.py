@@ -28,7 +28,7 @@ def test_round_trip_is_exact(tmp_path, file_type, name):
     assert back.start_ns == written.start_ns
     assert back.resolution_ns == 1
     assert back.trigger_s == pytest.approx(3e-6, abs=1e-12)
-    assert back.clock.u_s == pytest.approx(np.hypot(1e-7, 1e-9) / np.sqrt(3.0))
+    assert back.clock.u_s == pytest.approx(1e-7 / np.sqrt(3.0))
     assert back.stretches == (Stretch(0, 400, 0.0, 1e6),)
     for before, after in zip(written.channels, back.channels, strict=True):
         np.testing.assert_array_equal(after.samples, before.samples)

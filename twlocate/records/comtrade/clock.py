@@ -34,15 +34,14 @@ def stated_clock(
     offset_s
         Offset from UTC of the clock the file is stamped by; None where not stated.
     resolution_s
-        Size of the last digit of the start. Makers round it or cut it, so its error lies within ± one digit and
-        its standard uncertainty is resolution/√3 (GUM 4.3.7 again), added in quadrature.
+        Size of the last digit of the start; a note tells when it is coarser than the clock, and it is for whoever
+        uses the start to count it.
     doubts
         Whatever else makes the absolute time unusable, one sentence each.
     """
     u_s, usable, notes = _quality(quality)
     if u_s is not None and resolution_s > u_s:
         notes.append(f"the start is given to {resolution_s:g} s, coarser than the clock")
-    u_s = u_s if u_s is None else math.hypot(u_s, resolution_s / math.sqrt(3.0))
     if leap_second in ("1", "2"):
         notes.append("a leap second falls inside the record: a second may be counted twice or not at all")
     if leap_second == "3":

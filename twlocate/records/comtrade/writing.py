@@ -208,8 +208,7 @@ def quality_code(clock: Clock) -> str:
         return "F"
     if clock.u_s is None:
         return "0"
-    # the last digit of the start, which is 1 ns here, comes on top again in reading
-    bound_s = math.sqrt(max(0.0, 3.0 * clock.u_s**2 - 1e-18)) * (1.0 - 1e-9)
+    bound_s = clock.u_s * math.sqrt(3.0) * (1.0 - 1e-9)
     return next((code for code, limit in QUALITY_BOUND_S.items() if limit >= bound_s), "F")
 
 
