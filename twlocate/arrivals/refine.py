@@ -9,6 +9,7 @@ Fitzgerald, Numerical Bayesian Methods Applied to Signal Processing, 1996, ch. 5
 true shape and rise time are not known is thereby part of the standard uncertainty.
 """
 
+from collections.abc import Callable
 from dataclasses import dataclass
 
 import numpy as np
@@ -17,24 +18,35 @@ from twlocate.arrays import FloatArray
 from twlocate.arrivals.noise import Noise
 from twlocate.arrivals.shapes import SHAPES
 
-ONSETS = 49
+ONSETS = 41
 RISES = 9
-TOLERANCES = (0.1, 0.03, 0.01, 0.005)
-"""While the grid is coarse, misfits below these shares of the signal are not held against a point."""
+SHORTEST_RISE = 0.25
+"""Samples; a shorter rise looks the same."""
+
+IN_PLAY = (8.0, 2.0, 0.5, 0.1, 0.0, 0.0, 0.0, 0.0)
+"""While a grid closes in, points with a misfit above the least by up to these shares stay in play."""
+
+LEAST_IN_PLAY = 12.0
+"""Points with a log posterior this close to the largest stay in play in any case."""
+
+RESOLVED = 0.3
+"""A grid on which this share of the onsets is in play resolves the posterior."""
+
+LOG_RISE_SPAN = 4.0
+"""Width of the prior of the log rise, which a step, having no rise, does not have to share its chance over."""
 
 LIKENESS = 0.005
 """No real front is like any of the shapes to better than this share of the signal (common practice, no source)."""
 
-SHORTEST_RISE = 0.5
-"""Samples; a shorter rise looks the same."""
-
 LARGEST_PRIOR_COUNT = 50.0
 """The noise before the event counts for no more samples than this against the misfit at the front."""
+
+Shape = Callable[[FloatArray], FloatArray]
 
 
 @dataclass(frozen=True)
 class Front:
-    """A fitted front, in samples of the window it was fitted to."""
+    """A fitted front, in samples of the record."""
 
     onset: float
     u: float
@@ -43,18 +55,40 @@ class Front:
     rise: float
     shape: str
     window: tuple[int, int]
-    """First and stop sample of the window."""
+    """First and stop sample of the window it was fitted in."""
     fitted: FloatArray
     """(n,) the most probable model over the window."""
 
 
 @dataclass(frozen=True)
-class _Grid:
-    """Onsets (T,) and the (shape, rise) pairs (K,) to try at each."""
+class _Window:
+    """The whitened samples around a front with the base line taken off."""
+
+    samples: FloatArray
+    data: FloatArray
+    base: FloatArray
+    """(2, n) orthonormal rows: level and slope."""
+    noise: Noise
+
+
+@dataclass(frozen=True)
+class _Posterior:
+    """Log posterior of one shape on a grid of onsets (T,) and log rises (K,), shape (T, K)."""
 
     onsets: FloatArray
-    shapes: tuple[str, ...]
-    rises: FloatArray
+    log_rises: FloatArray
+    log_density: FloatArray
+
+    @property
+    def highest(self) -> float:
+        """The largest log density."""
+        return float(self.log_density.max())
+
+    @property
+    def cell(self) -> float:
+        """Size of a grid cell."""
+        width = self.log_rises[1] - self.log_rises[0] if self.log_rises.size > 1 else 1.0
+        return float((self.onsets[1] - self.onsets[0]) * width)
 
 
 def refine(samples: FloatArray, guess: float, reach: float, window: tuple[int, int], noise: Noise) -> Front:
@@ -67,63 +101,30 @@ def refine(samples: FloatArray, guess: float, reach: float, window: tuple[int, i
     guess : float
         Where the front is, sample.
     reach : float
-        How far from there its onset may be and how long its rise at most, samples.
+        How far from there its onset may be, samples; the rise may be twice as long.
     window : (int, int)
         First and stop sample that may be used: beyond it are other fronts.
     noise : Noise
         Measured before the event.
     """
     first, stop = window
-    y = samples[first:stop]
+    view = _window(samples[first:stop], noise)
     onsets = np.linspace(guess - 1.5 * reach, guess + reach, ONSETS) - first
-    rises = np.geomspace(SHORTEST_RISE, max(2 * reach, 2.0), RISES)
-    grid = _every_pair(onsets, dict.fromkeys(SHAPES, rises))
-    for tolerance in TOLERANCES:
-        log_posterior = _log_posterior(y, grid, noise, tolerance)
-        grid = _zoomed(grid, log_posterior, float(rises[-1]))
-    log_posterior = _log_posterior(y, grid, noise, LIKENESS)
-    weights = np.exp(log_posterior - log_posterior.max()) * _measure(grid)
-    of_onset = weights.sum(axis=1) / weights.sum()
-    onset = float(of_onset @ grid.onsets)
-    u = float(np.sqrt(of_onset @ (grid.onsets - onset) ** 2))
-    t, k = np.unravel_index(int(log_posterior.argmax()), log_posterior.shape)
-    fitted, height = _best_fit(y, float(grid.onsets[t]), grid.shapes[k], float(grid.rises[k]), noise)
-    return Front(onset + first, u, height, float(grid.rises[k]), grid.shapes[k], window, fitted)
+    log_rises = np.log(np.geomspace(SHORTEST_RISE, max(2 * reach, 2.0), RISES))
+    posteriors = _closed_in(view, onsets, log_rises)
+    onset, u = _moments(list(posteriors.values()))
+    best = max(posteriors, key=lambda name: posteriors[name].highest)
+    peak = posteriors[best]
+    t, k = np.unravel_index(int(peak.log_density.argmax()), peak.log_density.shape)
+    rise = float(np.exp(peak.log_rises[k]))
+    fitted, height = _best_fit(view, float(peak.onsets[t]), SHAPES[best], rise)
+    return Front(first + onset, u, height, rise, best, window, fitted)
 
 
-def _every_pair(onsets: FloatArray, rises: dict[str, FloatArray]) -> _Grid:
-    shapes = tuple(shape for shape, values in rises.items() for _ in values)
-    return _Grid(onsets, shapes, np.concatenate(list(rises.values())))
-
-
-def _log_posterior(y: FloatArray, grid: _Grid, noise: Noise, tolerance: float) -> FloatArray:
-    """Return log p(onset, shape, rise | y) up to a constant, shape (T, K)."""
-    t = np.arange(y.size, dtype=np.float64)
-    base = np.linalg.qr(noise.whiten(np.array([np.ones_like(t), t])).T)[0].T
-    data = _off(noise.whiten(y), base)
-    since = t - grid.onsets[:, None]
-    bend = _off(noise.whiten(np.maximum(since, 0.0)), base)
-    bend_norm = np.maximum(np.einsum("tn,tn->t", bend, bend), 1e-12)
-    on_bend = bend @ data / np.sqrt(bend_norm)
-    front = _off(noise.whiten(_fronts(since, grid)), base)
-    overlap = np.einsum("tkn,tn->tk", front, bend) / np.sqrt(bend_norm)[:, None]
-    front_norm = np.maximum(np.einsum("tkn,tkn->tk", front, front) - overlap**2, 1e-9)
-    on_front = (front @ data - overlap * on_bend[:, None]) / np.sqrt(front_norm)
-    misfit = np.maximum(data @ data - on_bend[:, None] ** 2 - on_front**2, 0.0)
-    prior_count = min(float(noise.count), LARGEST_PRIOR_COUNT)
-    freedom = prior_count + data.size - 4
-    log_volume = -0.5 * (np.log(front_norm) + np.log(bend_norm)[:, None])
-    expected = prior_count * noise.sigma**2 + tolerance**2 * float(data @ data)
-    return np.asarray(log_volume - 0.5 * freedom * np.log(expected + misfit))
-
-
-def _fronts(since: FloatArray, grid: _Grid) -> FloatArray:
-    """Return the front of every onset and pair, shape (T, K, n)."""
-    fronts = np.empty((since.shape[0], len(grid.shapes), since.shape[1]))
-    for shape in dict.fromkeys(grid.shapes):
-        own = np.array([name == shape for name in grid.shapes])
-        fronts[:, own] = SHAPES[shape](since[:, None, :] / grid.rises[own][:, None])
-    return fronts
+def _window(samples: FloatArray, noise: Noise) -> _Window:
+    level_and_slope = np.array([np.ones(samples.size), np.arange(samples.size)], dtype=np.float64)
+    base = np.asarray(np.linalg.qr(noise.whiten(level_and_slope).T)[0].T, dtype=np.float64)
+    return _Window(samples, _off(noise.whiten(samples), base), base, noise)
 
 
 def _off(rows: FloatArray, base: FloatArray) -> FloatArray:
@@ -131,40 +132,83 @@ def _off(rows: FloatArray, base: FloatArray) -> FloatArray:
     return np.asarray(rows - (rows @ base.T) @ base, dtype=np.float64)
 
 
-def _measure(grid: _Grid) -> FloatArray:
-    """Return the width each pair stands for in log rise (a shape is as likely as another), shape (K,)."""
-    widths = np.empty(grid.rises.size)
-    for shape in dict.fromkeys(grid.shapes):
-        own = np.array([name == shape for name in grid.shapes])
-        widths[own] = np.gradient(np.log(grid.rises[own]))
-    return widths
+def _closed_in(view: _Window, onsets: FloatArray, log_rises: FloatArray) -> dict[str, _Posterior]:
+    """Evaluate each shape on ever smaller grids around what its misfit leaves in play.
+
+    A shape that falls behind the best once the grids have closed in is left out.
+    """
+    posteriors = {
+        name: _posterior(view, shape, onsets, log_rises if name != "step" else np.zeros(1))
+        for name, shape in SHAPES.items()
+    }
+    for share in IN_PLAY:
+        drop = LEAST_IN_PLAY + 0.5 * view.data.size * np.log1p(share)
+        top = max(posterior.highest for posterior in posteriors.values())
+        posteriors = {
+            name: _narrowed(view, SHAPES[name], posterior, drop)
+            for name, posterior in posteriors.items()
+            if share > 0 or posterior.highest > top - drop
+        }
+    return posteriors
 
 
-def _zoomed(grid: _Grid, log_posterior: FloatArray, longest: float) -> _Grid:
-    """Return a grid that covers what is left in play, with as many points: onsets for all, rises for each shape."""
-    weights = np.exp(log_posterior - log_posterior.max()) * _measure(grid)
-    of_onset = weights.sum(axis=1)
-    low, high = _in_play(grid.onsets, of_onset)
-    rises = {}
-    for shape in dict.fromkeys(grid.shapes):
-        own = np.array([name == shape for name in grid.shapes])
-        of_rise = np.exp(log_posterior[:, own] - log_posterior[:, own].max()).sum(axis=0)
-        least, most = _in_play(np.log(grid.rises[own]), of_rise)
-        rises[shape] = np.exp(np.linspace(max(least, np.log(SHORTEST_RISE / 4)), min(most, np.log(longest)), RISES))
-    return _every_pair(np.linspace(low, high, ONSETS), rises)
+def _narrowed(view: _Window, shape: Shape, posterior: _Posterior, drop: float) -> _Posterior:
+    """Evaluate a shape on a grid around its points within `drop` of its best, unless the present one resolves them."""
+    kept = posterior.log_density > posterior.highest - drop
+    if drop == LEAST_IN_PLAY and kept.any(axis=1).mean() > RESOLVED:
+        return posterior
+    onsets = _around(posterior.onsets, kept.any(axis=1), ONSETS)
+    log_rises = _around(posterior.log_rises, kept.any(axis=0), RISES)
+    low, high = np.maximum(log_rises[[0, -1]], np.log(SHORTEST_RISE))
+    return _posterior(view, shape, onsets, np.linspace(low, high + 1e-9, log_rises.size))
 
 
-def _in_play(points: FloatArray, weights: FloatArray) -> tuple[float, float]:
-    """Return the ends of where the weight is more than a thousandth of its largest, and a point more either side."""
-    inside = np.flatnonzero(weights > 1e-4 * weights.max())
+def _around(points: FloatArray, kept: FloatArray, count: int) -> FloatArray:
+    """Return `count` even points from one before the first kept point to one behind the last."""
+    if points.size == 1:
+        return points
+    inside = np.flatnonzero(kept)
     step = points[1] - points[0]
-    return float(points[inside[0]] - step), float(points[inside[-1]] + step)
+    return np.linspace(points[inside[0]] - step, points[inside[-1]] + step, count)
 
 
-def _best_fit(y: FloatArray, onset: float, shape: str, rise: float, noise: Noise) -> tuple[FloatArray, float]:
-    """Return the model of one onset, shape and rise over the window, and its height."""
-    since = np.arange(y.size) - onset
-    front = SHAPES[shape](since / rise)
-    columns = np.array([np.ones(y.size), np.arange(y.size), np.maximum(since, 0.0), front], dtype=np.float64)
-    weights = np.linalg.lstsq(noise.whiten(columns).T, noise.whiten(y), rcond=None)[0]
+def _posterior(view: _Window, shape: Shape, onsets: FloatArray, log_rises: FloatArray) -> _Posterior:
+    """Integrate level, slopes, height and the size of the misfit out at every onset and rise."""
+    since = np.arange(view.samples.size) - onsets[:, None]
+    bend = _off(view.noise.whiten(np.maximum(since, 0.0)), view.base)
+    bend_norm = np.sqrt(np.maximum(np.einsum("tn,tn->t", bend, bend), 1e-12))
+    bend = bend / bend_norm[:, None]
+    front = _off(view.noise.whiten(shape(since[:, None, :] / np.exp(log_rises)[:, None])), view.base)
+    overlap = np.einsum("tkn,tn->tk", front, bend)
+    front_norm = np.sqrt(np.maximum(np.einsum("tkn,tkn->tk", front, front) - overlap**2, 1e-9))
+    on_bend = bend @ view.data
+    on_front = (front @ view.data - overlap * on_bend[:, None]) / front_norm
+    energy = float(view.data @ view.data)
+    misfit = np.maximum(energy - on_bend[:, None] ** 2 - on_front**2, 0.0)
+    prior_count = min(float(view.noise.count), LARGEST_PRIOR_COUNT)
+    expected = prior_count * view.noise.sigma**2 + LIKENESS**2 * energy
+    freedom = prior_count + view.data.size - 4
+    log_density = -np.log(front_norm) - np.log(bend_norm)[:, None] - 0.5 * freedom * np.log(expected + misfit)
+    return _Posterior(onsets, log_rises, np.asarray(log_density, dtype=np.float64))
+
+
+def _moments(posteriors: list[_Posterior]) -> tuple[float, float]:
+    """Return mean and standard deviation of the onset over all shapes, each as likely beforehand."""
+    top = max(p.highest for p in posteriors)
+    onsets = np.concatenate([p.onsets for p in posteriors])
+    spans = [1.0 if p.log_rises.size == 1 else 1.0 / LOG_RISE_SPAN for p in posteriors]
+    weights = np.concatenate(
+        [span * p.cell * np.exp(p.log_density - top).sum(axis=1) for p, span in zip(posteriors, spans, strict=True)]
+    )
+    mean = float(weights @ onsets / weights.sum())
+    return mean, float(np.sqrt(weights @ (onsets - mean) ** 2 / weights.sum()))
+
+
+def _best_fit(view: _Window, onset: float, shape: Shape, rise: float) -> tuple[FloatArray, float]:
+    """Return the model of one onset and rise over the window, and its height."""
+    since = np.arange(view.samples.size) - onset
+    columns = np.array(
+        [np.ones(since.size), np.arange(since.size), np.maximum(since, 0.0), shape(since / rise)], dtype=np.float64
+    )
+    weights = np.linalg.lstsq(view.noise.whiten(columns).T, view.noise.whiten(view.samples), rcond=None)[0]
     return np.asarray(weights @ columns, dtype=np.float64), float(weights[3])
