@@ -5,6 +5,8 @@ from dataclasses import dataclass
 
 import numpy as np
 import pytest
+from hypothesis import HealthCheck, given, settings
+from hypothesis import strategies as st
 
 from twlocate.errors import RecordError
 from twlocate.records import read
@@ -153,6 +155,41 @@ def test_departures_of_the_cfg(tmp_path, change, what):
 def test_what_cannot_be_read_is_refused_by_line(tmp_path, change, message):
     with pytest.raises(RecordError, match=rf"e\.cfg: .*{message}"):
         read(Written(**change).to(tmp_path))
+
+
+HARMLESS = {
+    "head": ["north,recorder", "north,recorder,1999", "north,recorder,2000", "north,recorder,1997"],
+    "counts": ["3,2A,1D", "9,2A,1D", "3, 2a, 1d", "003,002A,001D,"],
+    "status": [("1,trip,,,0",), ("1,trip",), ("1,trip,x,y,z,0",)],
+    "frequency": ["50", "50.0", "mains", ""],
+    "rates": [
+        ("1", "1000,8"),
+        ("1", "1000.000,45600"),
+        ("0", "0,8"),
+        ("0",),
+        ("2", "1000,8", "1000,8"),
+        ("1", "1000,3"),
+    ],
+    "start": ["02/03/2026,04:11:07.250000", "02/03/26,04:11:07.25", "2026/03/02,04:11:07.250000000"],
+    "trigger": ["02/03/2026,04:11:07.252000", "01/01/1970,00:00:00.000000", ""],
+    "tail": [("ASCII", "1"), ("ascii", ""), ("BINARY", "1"), (), ("ASCII", "1", "\x1a" * 40)],
+    "line_end": ["\r\n", "\n", "\r"],
+    "encoding": ["utf-8", "utf-8-sig", "utf-16"],
+}
+"""Variants of each part that leave samples and times as they are."""
+
+
+@given(st.fixed_dictionaries({part: st.sampled_from(variants) for part, variants in HARMLESS.items()}))
+@settings(max_examples=150, suppress_health_check=[HealthCheck.function_scoped_fixture], deadline=None)
+def test_departures_add_up(tmp_path, changes):
+    record = read(Written(**changes).to(tmp_path))
+    assert record.start_ns == START_NS
+    assert record.channel("U L1").samples.tolist() == [10 * k * 0.5 + 1 for k in range(1, 9)]
+    assert record.channel("I L1").samples.tolist() == [-2 * k for k in range(1, 9)]
+    assert record.status[0].states.tolist() == [1, 0] * 4
+    assert len(record.stretches) == 1
+    np.testing.assert_allclose(record.stretches[0].times_s(), np.arange(8) / 1000, atol=1e-12)
+    assert record.clock.usable
 
 
 def test_any_letter_case_and_either_file(tmp_path):

@@ -138,7 +138,7 @@ def parse_configuration(text: str, log: RepairLog) -> Configuration:
     rates, declared_rows = _rates(lines, log)
     month_first = edition == 1991
     start = read_moment(lines.take("the start time"), lines.where, month_first, log)
-    trigger = read_moment(lines.take("the trigger time"), lines.where, month_first, log)
+    trigger = read_moment(lines.take_or(""), lines.where, month_first, log)
     file_type = _file_type(lines, log)
     multiplier = _time_multiplier(lines, edition, log)
     offset, quality, leap = _time_codes(lines, edition, log)

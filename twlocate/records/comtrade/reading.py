@@ -182,7 +182,12 @@ def _trigger_s(configuration: Configuration, times: Timeline, log: RepairLog) ->
     step_s = 1.0 / times.stretches[0].rate_hz
     if -step_s <= trigger_s <= max(ends) + step_s:
         return trigger_s
-    log.add(f"trigger {trigger_s:.6g} s after the start, outside the record", "CFG", "trigger unknown", SURE)
+    log.add(
+        f"trigger {trigger_s:.6g} s after the start, outside the record",
+        "CFG",
+        "passed over: no sample lies there",
+        SURE,
+    )
     return None
 
 
