@@ -211,3 +211,27 @@ def test_whatever_is_written_comes_back(tmp_path, columns, start, step_us, delim
     assert [channel.samples.tolist() for channel in record.channels] == columns
     np.testing.assert_allclose(record.stretches[0].times_s(), np.arange(3) * step_us * 1e-6, rtol=1e-12)
     assert not record.repairs
+
+
+@pytest.mark.parametrize(
+    ("rows", "assumed", "sure", "start"),
+    [
+        (["13/03/2026 04:11:07.250", "13/03/2026 04:11:07.260"], "dd/mm", True, "2026-03-13T04:11:07.25"),
+        (["03/13/2026 4:11:07.250", "03/13/2026 4:11:07.260"], "mm/dd", True, "2026-03-13T04:11:07.25"),
+        (["02.03.2026 04:11:07.250", "02.03.2026 04:11:07.260"], "dd/mm", False, "2026-03-02T04:11:07.25"),
+    ],
+)
+def test_dates_of_spreadsheets(tmp_path, rows, assumed, sure, start):
+    record = read(table(tmp_path, "time;p [kPa]\n" + "".join(f"{row};{k}\n" for k, row in enumerate(rows))))
+    assert record.start_ns == np.datetime64(start, "ns").astype(np.int64)
+    assert record.repairs[0].assumed == f"read as {assumed}"
+    assert record.repairs[0].confidence == ("sure" if sure else "guess")
+    assert record.clock.usable == sure
+    assert record.stretches[0].rate_hz == pytest.approx(100.0)
+
+
+def test_dates_of_spreadsheets_in_two_columns(tmp_path):
+    text = "Date,Time,p [kPa]\n31/12/2025,23:59:59.5,1\n01/01/2026,00:00:00.0,2\n01/01/2026,00:00:00.5,3\n"
+    record = read(table(tmp_path, text))
+    assert record.start_ns == np.datetime64("2025-12-31T23:59:59.5", "ns").astype(np.int64)
+    assert record.stretches[0].rate_hz == pytest.approx(2.0)

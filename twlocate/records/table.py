@@ -10,7 +10,7 @@ from twlocate.arrays import FloatArray
 from twlocate.errors import RecordError
 from twlocate.records.assembling import as_readings, assemble
 from twlocate.records.delimited import forgiving_numbers
-from twlocate.records.moments import ISO_8601, NUMBER
+from twlocate.records.moments import ISO_8601, NUMBER, SLASHED
 from twlocate.records.record import Channel, Record
 from twlocate.records.repairs import SURE, RepairLog
 from twlocate.records.spacing import counted
@@ -24,7 +24,10 @@ SETTING = re.compile(r"#+\s*([A-Za-z][\w ]*?)\s*[:=]\s*(.*\S)\s*")
 COLUMN = re.compile(r"(.*?)\s*[\[(]([^\[\]()]*)[\])]\s*")
 SPACED_TITLE = re.compile(r"\S+(?:\s*[\[(][^\[\]()]*[\])])?")
 TIME_NAME = re.compile(r"(t|time|timestamp|date|datetime|date time|utc|elapsed)(\s.*)?", re.IGNORECASE)
-TIME_FIELD = re.compile(rf"{ISO_8601.pattern}|\d\d:\d\d(:\d\d(\.\d+)?)?")
+TIME_FIELD = re.compile(
+    rf"{ISO_8601.pattern}|{SLASHED.pattern}|\d\d?[/.]\d\d?[/.]\d{{4}}|\d\d?:\d\d(:\d\d([.,]\d+)?)?", re.IGNORECASE
+)
+"""A date, a time of day, or both."""
 BLANK = ("", "nan", "NaN", "NAN", "null", "-", "—", "N/A")
 MOST = 0.7
 DELIMITERS = ("\t", ";", ",", "|")
@@ -137,7 +140,7 @@ def _time_columns(layout: Layout) -> list[int]:
     if names[:2] == ["date", "time"]:
         return [0, 1]
     first = split(layout.rows[0], layout.delimiter)
-    dated = [index for index, field in enumerate(first) if ISO_8601.fullmatch(field)]
+    dated = [index for index, field in enumerate(first) if ISO_8601.fullmatch(field) or SLASHED.fullmatch(field)]
     named = [index for index, name in enumerate(names) if TIME_NAME.fullmatch(name)]
     return (dated or named)[:1]
 
