@@ -224,7 +224,7 @@ def _scale(fields: list[str], where: str, log: RepairLog) -> tuple[float, float]
 
 
 def _ratio(text: str) -> float | None:
-    return float(text) if NUMBER.fullmatch(text) else None
+    return float(text) if NUMBER.fullmatch(text) and abs(float(text)) <= LARGEST else None
 
 
 def _number_or(text: str, default: float, name: str, where: str, log: RepairLog) -> float:
@@ -248,7 +248,7 @@ def _status_line(lines: Lines, log: RepairLog) -> StatusLine:
 
 def _optional_number(line: str, where: str, log: RepairLog) -> float | None:
     text = line.strip().rstrip(",")
-    if NUMBER.fullmatch(text) and float(text) >= 0.0:
+    if NUMBER.fullmatch(text) and 0.0 <= float(text) <= LARGEST:
         return float(text) or None
     log.add(f"line frequency {text[:20]!r}", where, "unknown", SURE)
     return None
