@@ -161,7 +161,7 @@ LINE_SAMPLES = 25_000
 LINE_START_NS = 1_772_425_867_250_000_000
 LINE_Z = np.array([640.0, 385.0, 385.0])
 """Ohm, ground and two aerial modes."""
-OVERSAMPLING = 8
+OVERSAMPLING = 4
 
 
 def line_event(rng: np.random.Generator) -> Event:
@@ -220,14 +220,14 @@ def line_waves(length: float, speed: np.ndarray, x: float, resistance: float, vo
     reflect = np.outer(sent, to_phase_b)
     fault = Scatterer(reflect, reflect, np.eye(3) + reflect, np.eye(3) + reflect)
     nodes = [end_node(-0.5, 3), fault, end_node(-0.25, 3)]
-    return lattice(spans, nodes, 1, sent * voltage, horizon_s=13e-3, floor=20.0)
+    return lattice(spans, nodes, 1, sent * voltage, horizon_s=6e-3, floor=150.0)
 
 
 def line_channels(
     packets: list[Packet], reflection: float, onset_s: float, angle: float, rng: np.random.Generator
 ) -> tuple[Channel, ...]:
     """Return what a recorder with a fourth-order anti-alias filter stores: three voltages, three currents."""
-    warm_up = 2000
+    warm_up = 500
     t = (np.arange((LINE_SAMPLES + warm_up) * OVERSAMPLING) / OVERSAMPLING - warm_up) / LINE_RATE_HZ
     omega = 2 * np.pi * 50
     incoming = np.zeros((3, t.size))

@@ -1,6 +1,6 @@
 """From a terminal's recording to the arrivals in it: channels to waves, waves to picks."""
 
-from collections.abc import Mapping
+from collections.abc import Iterable, Mapping
 from dataclasses import dataclass, replace
 
 import numpy as np
@@ -23,8 +23,14 @@ PHASES = "abc"
 FEWEST_SAMPLES = 64
 """Fewer samples than this hold no noise to measure a front against."""
 
+LEAST_LAUNCH = 0.2
+"""A launched signal is at least this share of the highest front: an open or short end echoes no more than all of it."""
+
 PULSE_STAYS_UP = 0.4
 """Between its edges a pulse stays above this share of its height."""
+
+STILL_WITHOUT_CLIPPING = 0.5
+"""Where more than this share of readings repeat the one before, equal readings tell nothing."""
 
 FLAT_TOP = 3
 """This many equal readings at the limit of a channel are taken for clipping."""
@@ -75,8 +81,10 @@ def observe(case: Case, terminal: Terminal) -> Observation:
     waves = _waves(signals, _impedance_at(case, terminal.node))
     candidates = [(wave, pick(_trace(signals, wave))) for wave in waves]
     wave, picks = max(candidates, key=lambda candidate: _strength(candidate[1]))
+    if terminal.launches:
+        picks = from_the_launch(picks)
     if terminal.launches == "pulse":
-        picks = replace(picks, arrivals=without_trailing_edges(picks.arrivals, picks.trace))
+        picks = without_trailing_edges(picks)
     return Observation(terminal, record, wave, picks, (*picks.gates, _clipping(signals, wave, picks)))
 
 
@@ -212,36 +220,53 @@ def _trace(signals: _Signals, wave: Wave) -> Trace:
 # ---------------------------------------------------------------- pulses
 
 
-def without_trailing_edges(arrivals: tuple[Arrival, ...], trace: Trace) -> tuple[Arrival, ...]:
+def from_the_launch(picks: Picks) -> Picks:
+    """Leave out what precedes the launched signal: it is no echo, and no echo is much higher than the launch."""
+    heights = [arrival.amplitude for arrival in picks.arrivals]
+    launch = next((i for i, height in enumerate(heights) if height >= LEAST_LAUNCH * max(heights)), 0)
+    return _only(picks, range(launch, len(heights)))
+
+
+def _only(picks: Picks, kept: Iterable[int]) -> Picks:
+    indices = list(kept)
+    return replace(
+        picks,
+        arrivals=tuple(picks.arrivals[index] for index in indices),
+        fronts=tuple(picks.fronts[index] for index in indices),
+    )
+
+
+def without_trailing_edges(picks: Picks) -> Picks:
     """Leave out the falling edge of a launched pulse and those of its echoes.
 
     The pulse lasts from the first front to the second if that has the other sign and the trace stays up in
     between. A pulse too short for that is one arrival, and nothing is left out.
     """
-    width_s = _pulse_width_s(arrivals, trace)
-    kept: list[Arrival] = []
-    for arrival in arrivals:
-        ends = (
-            front.polarity != arrival.polarity and abs(arrival.time_s - front.time_s - width_s) < width_s / 2
-            for front in kept
-        )
-        if width_s == 0 or not any(ends):
-            kept.append(arrival)
-    return tuple(kept)
+    width_s = _pulse_width_s(picks)
+    kept: list[int] = []
+    for index, arrival in enumerate(picks.arrivals):
+        if not any(_is_pulse(picks.arrivals[start], arrival, width_s) for start in kept):
+            kept.append(index)
+    return _only(picks, kept)
 
 
-def _pulse_width_s(arrivals: tuple[Arrival, ...], trace: Trace) -> float:
+def _is_pulse(start: Arrival, end: Arrival, width_s: float) -> bool:
+    """Whether two fronts are the edges of a pulse of the launched width."""
+    return start.polarity != end.polarity and abs(end.time_s - start.time_s - width_s) < width_s / 2
+
+
+def _pulse_width_s(picks: Picks) -> float:
     """Return how long the launched pulse lasts; 0 where its two edges are not told apart."""
-    if len(arrivals) < 2 or arrivals[0].polarity == arrivals[1].polarity:
+    if len(picks.arrivals) < 2 or picks.arrivals[0].polarity == picks.arrivals[1].polarity:
         return 0.0
-    start, end = (round((arrival.time_s - trace.start_s) * trace.rate_hz) for arrival in arrivals[:2])
+    rising, falling = picks.arrivals[:2]
+    start, end = (round(front.onset) for front in picks.fronts[:2])
     third = (end - start) // 3
-    middle = trace.samples[start + third : end - third]
-    before = trace.samples[: max(start - third, 1)]
-    stays_up = middle.size > 0 and arrivals[0].polarity * (np.median(middle) - np.median(before)) > (
-        PULSE_STAYS_UP * arrivals[0].amplitude
-    )
-    return arrivals[1].time_s - arrivals[0].time_s if stays_up else 0.0
+    middle, before = picks.level[start + third : end - third], picks.level[: max(start - third, 1)]
+    if middle.size == 0:
+        return 0.0
+    stays_up = rising.polarity * (np.median(middle) - np.median(before)) > PULSE_STAYS_UP * rising.amplitude
+    return falling.time_s - rising.time_s if stays_up else 0.0
 
 
 # ---------------------------------------------------------------- clipping
@@ -262,7 +287,10 @@ def _clipping(signals: _Signals, wave: Wave, picks: Picks) -> Gate:
 
 
 def _flat_at_limit(samples: FloatArray, window: slice) -> bool:
-    """Whether a run of equal readings at the channel's largest or smallest value lies in the window."""
+    """Whether readings that should show noise stand still at the channel's largest or smallest value."""
+    before = np.abs(np.diff(samples[: max(window.start, 2)]))
+    if np.mean(before == 0) > STILL_WITHOUT_CLIPPING:
+        return False  # the noise is below the converter step: readings stand still anyway
     for limit in (samples.max(), samples.min()):
         at_limit = samples[window] == limit
         runs = np.convolve(at_limit, np.ones(FLAT_TOP), "valid") if at_limit.size >= FLAT_TOP else np.zeros(0)

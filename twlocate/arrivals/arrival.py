@@ -63,7 +63,10 @@ class Picks:
     """What was found in a trace."""
 
     trace: Trace
+    level: FloatArray
+    """(n,) the trace without the power frequency; what was timed."""
     denoised: FloatArray
+    """(n,) the same, shrunk."""
     noise: float
     """Standard deviation of the noise before the event, in the trace's unit."""
     arrivals: tuple[Arrival, ...]

@@ -20,6 +20,9 @@ WINDOWS_A_SCALE = 16
 GROWTH = 1.3
 """A front is no longer than the scale from which doubling the scale raises the modulus by less than this."""
 
+MOST_WEIGHED = 100
+"""No more later fronts than this are looked at; what follows is ringing."""
+
 SMALLEST_LATER = 0.03
 """Later fronts below this share of the first one are not listed."""
 
@@ -61,39 +64,64 @@ def first_front(samples: FloatArray, step: float, false_alarm: float) -> tuple[C
 
 
 def _earliest(samples: FloatArray, field: Modulus, limit: float) -> Candidate | None:
+    """Follow the earliest front from the finest scale that shows it to the scale at which it stops growing."""
     above = np.flatnonzero(field.largest > limit)
     if above.size == 0:
         return None
-    start = int(above[0])
-    scale = field.scales[int(field.strongest[start])]
-    region = slice(max(start - scale, 0), start + 2 * scale)
-    return _candidate(samples, field, region, limit)
+    index, start = _finest(samples, field, limit, int(above[0]))
+    heights = np.abs(haar_coefficients(samples, field.scales[index]))
+    peak = _uphill(heights, start, field.scales[index])
+    margin = heights[peak] / field.sigmas[index] - limit
+    while index + 1 < len(field.scales):
+        coarser = np.abs(haar_coefficients(samples, field.scales[index + 1]))
+        summit = _uphill(coarser, peak, field.scales[index + 1])
+        if coarser[summit] < GROWTH * heights[peak]:
+            break
+        index, heights, peak = index + 1, coarser, summit
+        margin = max(margin, heights[peak] / field.sigmas[index] - limit)
+    polarity = 1 if haar_coefficients(samples, field.scales[index])[peak] > 0 else -1
+    return Candidate(peak, field.scales[index], polarity, float(margin))
 
 
-def _candidate(samples: FloatArray, field: Modulus, region: slice, limit: float) -> Candidate:
-    """Find the front in `region`: its scale, and at that scale its place."""
-    heights = [float(np.abs(haar_coefficients(samples, scale)[region]).max()) for scale in field.scales]
-    seen = [h > limit * sigma for h, sigma in zip(heights, field.sigmas, strict=True)]
-    index = seen.index(True) if any(seen) else len(heights) - 1
-    while index + 1 < len(heights) and heights[index + 1] > GROWTH * heights[index]:
-        index += 1
-    scale = field.scales[index]
-    coefficients = haar_coefficients(samples, scale)[region]
-    peak = int(np.abs(coefficients).argmax())
-    margin = max(h / sigma for h, sigma in zip(heights, field.sigmas, strict=True)) - limit
-    return Candidate(region.start + peak, scale, 1 if coefficients[peak] > 0 else -1, margin)
+def _finest(samples: FloatArray, field: Modulus, limit: float, start: int) -> tuple[int, int]:
+    """Return (index of the finest scale that shows the front, where it first does so).
+
+    A coarse scale sees a front from its own length ahead, so the front lies within two lengths of `start`.
+    """
+    coarse = int(field.strongest[start])
+    stop = start + 2 * field.scales[coarse]
+    for index in range(coarse):
+        heights = np.abs(haar_coefficients(samples, field.scales[index])[start:stop])
+        above = np.flatnonzero(heights > limit * field.sigmas[index])
+        if above.size:
+            return index, start + int(above[0])
+    return coarse, start
+
+
+def _uphill(heights: FloatArray, start: int, reach: int) -> int:
+    """Return the maximum that is reached from `start` by steps of up to `reach` samples that lead up."""
+    here = start
+    while True:
+        low = max(here - reach, 0)
+        there = low + int(heights[low : here + reach + 1].argmax())
+        if heights[there] <= heights[here]:
+            return here
+        here = there
 
 
 def later_fronts(
     denoised: FloatArray, first: Candidate, field_sigma: float, limit: float, most: int
 ) -> list[Candidate]:
-    """Return fronts behind the first one, in time order: maxima of the denoised trace's modulus at its scale."""
+    """Return the `most` strongest fronts behind the first one, in time order.
+
+    They are maxima of the denoised trace's modulus at the scale of the first front.
+    """
     coefficients = haar_coefficients(denoised, first.scale)
     height = np.abs(coefficients)
     start = first.sample + 2 * first.scale
     least = max(limit * field_sigma, SMALLEST_LATER * float(height[first.sample]))
     found: list[Candidate] = []
-    while len(found) < most:
+    while len(found) < MOST_WEIGHED:
         above = np.flatnonzero(height[start:] > least)
         if above.size == 0:
             break
@@ -102,4 +130,5 @@ def later_fronts(
         margin = float(height[peak]) / field_sigma - limit
         found.append(Candidate(peak, first.scale, 1 if coefficients[peak] > 0 else -1, margin))
         start = peak + 2 * first.scale
-    return found
+    strongest = sorted(found, key=lambda candidate: -candidate.margin)[:most]
+    return sorted(strongest, key=lambda candidate: candidate.sample)

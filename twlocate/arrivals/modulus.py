@@ -13,6 +13,11 @@ import numpy as np
 
 from twlocate.arrays import FloatArray
 
+TINY = 1e-300
+
+SILENT_SHARE = 0.25
+"""Of the converter step, where the noise is too small to spread the rounding: a step up or down is then no front."""
+
 MEDIAN_OF_NORMAL = 0.6744897501960817
 """The median of |z| for a standard normal z."""
 
@@ -62,12 +67,15 @@ def modulus(samples: FloatArray, scales: tuple[int, ...], quiet: int, step: floa
 
     `step` is the converter's; noise below its rounding error is not believed.
     """
+    rounding = 1e-12 * float(np.abs(samples).max())
     largest = np.zeros(samples.size)
     strongest = np.zeros(samples.size)
-    sigmas = []
+    sigmas: list[float] = []
+    silent = robust_sigma(np.diff(samples[:quiet])) < step
     for index, scale in enumerate(scales):
         coefficients = haar_coefficients(samples, scale)
-        least = max(step / np.sqrt(6 * scale), np.finfo(np.float64).tiny)  # two means of `scale` rounded values
+        rounded = step * SILENT_SHARE if silent else step / np.sqrt(6 * scale)  # two means of `scale` rounded values
+        least = max(rounded, rounding, TINY)
         sigma = robust_sigma(coefficients[scale : max(quiet - scale, scale)], float(least))
         sigmas.append(sigma)
         relative = np.abs(coefficients) / sigma

@@ -34,7 +34,7 @@ def pick(trace: Trace, *, false_alarm: float = 1e-3, most: int = 8) -> Picks:
     false_alarm : float
         Probability that noise alone gives a first front somewhere in the trace.
     most : int
-        No more fronts than this are listed.
+        No more fronts than this are listed: the first and the strongest behind it.
 
     Returns
     -------
@@ -47,11 +47,12 @@ def pick(trace: Trace, *, false_alarm: float = 1e-3, most: int = 8) -> Picks:
         The samples are not a row of finite numbers.
     """
     samples = as_signal(trace.samples, trace.name or "trace")
+    trace = replace(trace, step=max(trace.step, _finest_step(samples)))
     samples = _hum_off(samples, trace, false_alarm)
     first, quiet = first_front(samples, trace.step, false_alarm)
     gates = [_quiet_gate(first, quiet)]
     if first is None or quiet < FEWEST_QUIET:
-        return Picks(trace, samples, 0.0, (), tuple(gates))
+        return Picks(trace, samples, samples, 0.0, (), tuple(gates))
     noise = measure_noise(samples[:quiet], trace.step)
     denoised = shrink(samples, quiet)
     sigma = robust_sigma(haar_coefficients(samples, first.scale)[first.scale : quiet], trace.step / np.sqrt(12))
@@ -61,7 +62,13 @@ def pick(trace: Trace, *, false_alarm: float = 1e-3, most: int = 8) -> Picks:
     arrivals = tuple(
         _arrival(trace, front, candidate, noise) for front, candidate in zip(fronts, candidates, strict=True)
     )
-    return Picks(trace, denoised, noise.spread, arrivals, tuple(gates), tuple(fronts))
+    return Picks(trace, samples, denoised, noise.spread, arrivals, tuple(gates), tuple(fronts))
+
+
+def _finest_step(samples: FloatArray) -> float:
+    """Return the smallest difference between two readings: what a silent record cannot be better than."""
+    differences = np.diff(np.unique(samples))
+    return float(differences.min()) if differences.size else 1.0
 
 
 def _hum_off(samples: FloatArray, trace: Trace, false_alarm: float) -> FloatArray:

@@ -13,6 +13,7 @@ from collections.abc import Callable
 from dataclasses import dataclass
 
 import numpy as np
+from numpy.typing import NDArray
 
 from twlocate.arrays import FloatArray
 from twlocate.arrivals.noise import Noise
@@ -154,16 +155,16 @@ def _closed_in(view: _Window, onsets: FloatArray, log_rises: FloatArray) -> dict
 
 def _narrowed(view: _Window, shape: Shape, posterior: _Posterior, drop: float) -> _Posterior:
     """Evaluate a shape on a grid around its points within `drop` of its best, unless the present one resolves them."""
-    kept = posterior.log_density > posterior.highest - drop
+    kept = np.asarray(posterior.log_density > posterior.highest - drop)
     if drop == LEAST_IN_PLAY and kept.any(axis=1).mean() > RESOLVED:
         return posterior
-    onsets = _around(posterior.onsets, kept.any(axis=1), ONSETS)
-    log_rises = _around(posterior.log_rises, kept.any(axis=0), RISES)
+    onsets = _around(posterior.onsets, np.asarray(kept.any(axis=1)), ONSETS)
+    log_rises = _around(posterior.log_rises, np.asarray(kept.any(axis=0)), RISES)
     low, high = np.maximum(log_rises[[0, -1]], np.log(SHORTEST_RISE))
     return _posterior(view, shape, onsets, np.linspace(low, high + 1e-9, log_rises.size))
 
 
-def _around(points: FloatArray, kept: FloatArray, count: int) -> FloatArray:
+def _around(points: FloatArray, kept: NDArray[np.bool_], count: int) -> FloatArray:
     """Return `count` even points from one before the first kept point to one behind the last."""
     if points.size == 1:
         return points
@@ -208,7 +209,13 @@ def _best_fit(view: _Window, onset: float, shape: Shape, rise: float) -> tuple[F
     """Return the model of one onset and rise over the window, and its height."""
     since = np.arange(view.samples.size) - onset
     columns = np.array(
-        [np.ones(since.size), np.arange(since.size), np.maximum(since, 0.0), shape(since / rise)], dtype=np.float64
+        [
+            np.ones(since.size),
+            np.arange(since.size),
+            np.maximum(since, 0.0),
+            shape(np.asarray(since / rise, dtype=np.float64)),
+        ],
+        dtype=np.float64,
     )
     weights = np.linalg.lstsq(view.noise.whiten(columns).T, view.noise.whiten(view.samples), rcond=None)[0]
     return np.asarray(weights @ columns, dtype=np.float64), float(weights[3])

@@ -26,7 +26,7 @@ def _smooth(u: FloatArray) -> FloatArray:
 
 def _exponential(u: FloatArray) -> FloatArray:
     """A first-order lag; 90 % at u = 1."""
-    return -np.expm1(-np.log(10.0) * np.maximum(u, 0.0))
+    return np.asarray(-np.expm1(-np.log(10.0) * np.maximum(u, 0.0)), dtype=np.float64)
 
 
 def _cascade(u: FloatArray) -> FloatArray:

@@ -22,7 +22,7 @@ NEGLIGIBLE = 1e-9
 """Explanations with a smaller prior are left out."""
 
 LATER_READINGS = 4
-"""How many echoes behind a launched pulse are weighed against each other."""
+"""How many echoes behind a launched pulse, the least doubtful ones, are weighed against each other."""
 
 EARLIER_READINGS = 3
 """How many readings a station may offer as its first front."""
@@ -127,7 +127,8 @@ def _of_pulse(route: Route, station: Station, own: Sequence[int], readings: Sequ
         yield _Part((), 1.0)
         return
     launch = (own[0], Cause("launch"))
-    later = own[1 : 1 + LATER_READINGS]
+    likeliest = sorted(own[1:], key=lambda index: readings[index].outlier)[:LATER_READINGS]
+    later = sorted(likeliest)
     mirrors = [node for node in route.nodes if node != station.node]
     for echo in later:
         others = [index for index in later if index != echo]
