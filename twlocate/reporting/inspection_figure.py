@@ -86,10 +86,10 @@ def _draw_record(record: Record, axes: "Sequence[Axes] | object") -> None:
         panel.spines[["top", "right"]].set_visible(False)
         if record.trigger_s is not None:
             panel.axvline(record.trigger_s, color=TRIGGER_INK, linewidth=0.9, linestyle=":", zorder=3)
-    own[0].set_xlim(min(start for start, _ in ends), max(end for _, end in ends) or 1.0)
-    own[0].set_title(
-        f"{record.path.name}   {record.station}", loc="left", fontsize=9, fontweight="bold", parse_math=False
-    )
+    left, right = min(start for start, _ in ends), max(end for _, end in ends)
+    own[0].set_xlim(left, right if right > left else left + 1.0 / record.stretches[0].rate_hz)
+    title = f"{record.path.name}   {record.station}"
+    own[0].set_title(title, loc="left", fontsize=9, fontweight="bold", parse_math=False)
     dotted = " (dotted: trigger)" if record.trigger_s is not None else ""
     own[-1].set_xlabel(f"time from the record's start, s{dotted}", fontsize=8)
 
