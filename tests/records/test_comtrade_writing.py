@@ -126,7 +126,9 @@ def test_single_precision_readings_pass_through_float32(tmp_path):
     samples = np.random.default_rng(8).normal(size=90).astype(np.float32).astype(float)
     record = dataclasses.replace(record_of(COUNTS), channels=(Channel("p", "kPa", samples),))
     write_comtrade(record, tmp_path / "e.cff", "FLOAT32")
-    np.testing.assert_array_equal(read(tmp_path / "e.cff").channels[0].samples, samples)
+    back = read(tmp_path / "e.cff").channels[0]
+    np.testing.assert_array_equal(back.samples, samples)
+    assert (back.step, back.low, back.high) == (None, None, None)  # computed readings show no converter
 
 
 def with_samples(samples, **facts):
