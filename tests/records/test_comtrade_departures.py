@@ -393,3 +393,58 @@ def test_the_repairs_say_where_what_and_how_sure(tmp_path):
     analog = tuple(line.replace(",0,-32767", ",,-32767") for line in Written().analog)
     (repair,) = read(Written(analog=analog).to(tmp_path)).repairs
     assert dataclasses.astuple(repair) == ("blank skew", "CFG line 3, 4", "taken as 0", "likely")
+
+
+@pytest.mark.parametrize("field", ["", "  ", "2", "x", "-1"])
+def test_a_state_that_is_none_is_written_down(tmp_path, field):
+    rows = (f"1,0,10,-1,{field}", *Written().rows[1:])
+    record = read(Written(rows=rows).to(tmp_path))
+    assert record.status[0].states.tolist() == [0, 0, 1, 0, 1, 0, 1, 0]
+    assert whats(record) == ["status fields that are neither 0 nor 1"]
+
+
+def test_rows_out_of_shape_are_left_out_and_their_neighbours_kept(tmp_path):
+    rows = [*Written().rows[:3], "4,3000,40", "free text", "", *Written().rows[4:]]
+    record = read(Written(rows=tuple(rows)).to(tmp_path))
+    assert record.n_samples == 7
+    assert starts(record) == [(0, 3, 0.0), (3, 4, 0.004)]
+    assert "rows with too few fields" in whats(record)
+
+
+def test_a_cut_last_row_is_no_sample(tmp_path):
+    record = read(Written(rows=(*Written().rows[:-1], "8,7000,8")).to(tmp_path))
+    assert record.n_samples == 7
+    assert whats(record) == ["rows with too few fields", "7 rows, 8 declared"]
+
+
+def test_a_line_end_in_the_middle_of_a_row_moves_no_field(tmp_path):
+    rows = list(Written().rows)
+    rows[2], rows[3] = "3,2000,30,-3", "1,4,3000,40,-4,0"
+    record = read(Written(rows=tuple(rows)).to(tmp_path))
+    assert record.channel("U L1").samples.tolist() == [10 * k * 0.5 + 1 for k in range(1, 9)]
+    assert record.status[0].states.tolist() == [1, 0] * 4
+
+
+@pytest.mark.parametrize("blank", ["", " ", "   ", "\t"])
+@pytest.mark.parametrize("place", range(2, 4))
+def test_a_blank_reading_is_never_invented(tmp_path, blank, place):
+    rows = [row.split(",") for row in Written().rows]
+    rows[4][place] = blank
+    record = read(Written(rows=tuple(",".join(row) for row in rows)).to(tmp_path))
+    channel = record.channels[place - 2]
+    assert np.flatnonzero(np.isnan(channel.samples)).tolist() == [4]
+    assert whats(record) == ["1 sample missing"]
+
+
+def test_signs_and_leading_zeros_of_counts(tmp_path):
+    rows = tuple(f"{k:04d},{1000 * (k - 1):06d},+{k:06d},-{k:06d},0" for k in range(1, 9))
+    record = read(Written(rows=rows).to(tmp_path))
+    assert record.channel("U L1").samples.tolist() == [0.5 * k + 1 for k in range(1, 9)]
+    assert not record.repairs
+
+
+def test_decimals_in_an_ascii_file_are_counts_too(tmp_path):
+    rows = tuple(f"{k},{1000 * (k - 1)},{k + 0.25},{-k * 1e-3:e},1" for k in range(1, 9))
+    record = read(Written(rows=rows).to(tmp_path))
+    assert record.channel("U L1").samples.tolist() == [0.5 * (k + 0.25) + 1 for k in range(1, 9)]
+    assert not record.repairs
