@@ -9,6 +9,8 @@ from numpy.typing import NDArray
 
 from twlocate.arrays import FloatArray
 
+INTEGERS = np.iinfo(np.int64)
+"""Numbers beyond come out of numpy's parser as the largest, not as a fault."""
 BLANK_FIELD = re.compile(rb",[ \t]+(?=,)")
 """Blanks between commas: numpy's parser takes such a field for 0, or for the number before it."""
 
@@ -23,7 +25,7 @@ def regular_numbers(data: bytes, columns: int) -> NDArray[np.number] | None:
     if b" " in flat or b"\t" in flat:
         flat = BLANK_FIELD.sub(b",", flat)
     numbers = _parsed(flat, np.int64)
-    if numbers is None:
+    if numbers is None or (numbers.size and not INTEGERS.min < numbers.min() <= numbers.max() < INTEGERS.max):
         blanks = flat.replace(b",,", b",nan,").replace(b",,", b",nan,")
         numbers = _parsed(blanks, np.float64)
     if numbers is None or numbers.size % columns:
