@@ -389,6 +389,16 @@ def test_cff_with_a_wrong_length_and_loose_headers(tmp_path):
         read(cff)
 
 
+def test_what_follows_the_stated_length_of_a_cff_is_no_data(tmp_path):
+    pair = Written(tail=("BINARY", "1")).to(tmp_path, data=binary_rows(8))
+    data = pair.with_suffix(".dat").read_bytes()
+    head = f"--- file type: DAT BINARY: {len(data)} ---\r\n".encode()
+    (tmp_path / "e.cff").write_bytes(b"--- file type: CFG ---\r\n" + pair.read_bytes() + head + data + data[:28])
+    record = read(tmp_path / "e.cff")
+    assert record.n_samples == 8
+    assert whats(record) == ["DAT section of 140 bytes, 112 stated"]
+
+
 def test_the_repairs_say_where_what_and_how_sure(tmp_path):
     analog = tuple(line.replace(",0,-32767", ",,-32767") for line in Written().analog)
     (repair,) = read(Written(analog=analog).to(tmp_path)).repairs

@@ -147,6 +147,12 @@ def test_arrays_with_a_time_in_milliseconds_and_a_matrix():
     assert record.stretches[0].rate_hz == pytest.approx(500.0)
 
 
+def test_the_length_that_most_arrays_share_wins_over_a_longer_one():
+    record = arrays({"rate": "10"}, p=np.arange(5.0), q=np.arange(5.0), long=np.arange(50.0))
+    assert [channel.name for channel in record.channels] == ["p", "q"]
+    assert record.repairs[0].where == "array 'long'"
+
+
 def test_arrays_with_absolute_times_as_floats_say_how_coarse_they_are():
     log = RepairLog()
     named = NamedArrays({"time": 1772424667.25 + np.arange(50) / 100, "p": np.arange(50.0)})
