@@ -20,6 +20,9 @@ ACROSS_AND_THROUGH = (("v", "i"), ("p", "q"))
 
 PHASES = "abc"
 
+FRONTS_LISTENING, FRONTS_LAUNCHING = 6, 16
+"""Most fronts to time at a terminal; where a pulse was launched every echo has two."""
+
 FEWEST_SAMPLES = 64
 """Fewer samples than this hold no noise to measure a front against."""
 
@@ -32,7 +35,7 @@ PULSE_STAYS_UP = 0.4
 STILL_WITHOUT_CLIPPING = 0.5
 """Where more than this share of readings repeat the one before, equal readings tell nothing."""
 
-FLAT_TOP = 3
+FLAT_TOP = 6
 """This many equal readings at the limit of a channel are taken for clipping."""
 
 
@@ -79,7 +82,8 @@ def observe(case: Case, terminal: Terminal) -> Observation:
     channels = {role: record.channel(name) for role, name in terminal.channels.items()}
     signals = _signals(record, channels)
     waves = _waves(signals, _impedance_at(case, terminal.node))
-    candidates = [(wave, pick(_trace(signals, wave))) for wave in waves]
+    most = FRONTS_LAUNCHING if terminal.launches else FRONTS_LISTENING
+    candidates = [(wave, pick(_trace(signals, wave), most=most)) for wave in waves]
     wave, picks = max(candidates, key=lambda candidate: _strength(candidate[1]))
     if terminal.launches:
         picks = from_the_launch(picks)

@@ -17,7 +17,7 @@ FEWEST_QUIET = 48
 WINDOWS_A_SCALE = 16
 """A scale is used if the quiet part holds this many windows of it."""
 
-GROWTH = 1.3
+GROWTH = 1.15
 """A front is no longer than the scale from which doubling the scale raises the modulus by less than this."""
 
 MOST_WEIGHED = 100
@@ -36,6 +36,8 @@ class Candidate:
     scale: int
     """About its rise time, samples."""
     polarity: int
+    height: float
+    """Modulus where it stops growing: about the height of the front, in the trace's unit."""
     margin: float
     """By how many standard deviations its modulus is above the threshold."""
 
@@ -72,15 +74,17 @@ def _earliest(samples: FloatArray, field: Modulus, limit: float) -> Candidate | 
     heights = np.abs(haar_coefficients(samples, field.scales[index]))
     peak = _uphill(heights, start, field.scales[index])
     margin = heights[peak] / field.sigmas[index] - limit
+    height = float(heights[peak])
     while index + 1 < len(field.scales):
         coarser = np.abs(haar_coefficients(samples, field.scales[index + 1]))
         summit = _uphill(coarser, peak, field.scales[index + 1])
         if coarser[summit] < GROWTH * heights[peak]:
+            height = max(height, float(coarser[summit]))
             break
         index, heights, peak = index + 1, coarser, summit
-        margin = max(margin, heights[peak] / field.sigmas[index] - limit)
+        margin, height = max(margin, heights[peak] / field.sigmas[index] - limit), float(heights[peak])
     polarity = 1 if haar_coefficients(samples, field.scales[index])[peak] > 0 else -1
-    return Candidate(peak, field.scales[index], polarity, float(margin))
+    return Candidate(peak, field.scales[index], polarity, height, float(margin))
 
 
 def _finest(samples: FloatArray, field: Modulus, limit: float, start: int) -> tuple[int, int]:
@@ -128,7 +132,8 @@ def later_fronts(
         region = slice(start + int(above[0]), start + int(above[0]) + 2 * first.scale)
         peak = region.start + int(height[region].argmax())
         margin = float(height[peak]) / field_sigma - limit
-        found.append(Candidate(peak, first.scale, 1 if coefficients[peak] > 0 else -1, margin))
+        polarity = 1 if coefficients[peak] > 0 else -1
+        found.append(Candidate(peak, first.scale, polarity, float(height[peak]), margin))
         start = peak + 2 * first.scale
     strongest = sorted(found, key=lambda candidate: -candidate.margin)[:most]
     return sorted(strongest, key=lambda candidate: candidate.sample)

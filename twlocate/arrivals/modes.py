@@ -22,12 +22,19 @@ def strongest_mode(phases: FloatArray, *, false_alarm_sigmas: float = 8.0) -> st
     false_alarm_sigmas : float
         From this height on a modulus is taken for the event.
     """
+    modes = {mode: np.asarray(weights) @ phases for mode, weights in AERIAL_MODES.items()}
     quiet = max(int(QUIET_SHARE * phases.shape[1]), 4 * SCALES[-1])
-    heights = {
-        mode: modulus(np.asarray(weights) @ phases, SCALES, quiet, 0.0).largest
-        for mode, weights in AERIAL_MODES.items()
-    }
-    above = np.flatnonzero(np.max(list(heights.values()), axis=0) > false_alarm_sigmas)
-    start = int(above[0]) if above.size else 0
-    stop = start + FRONT_SAMPLES if above.size else phases.shape[1]
-    return max(heights, key=lambda mode: float(heights[mode][start:stop].max()))
+    start = _first_above(_heights(modes, quiet), false_alarm_sigmas)
+    heights = _heights(modes, max(start - SCALES[-1], quiet))
+    return max(heights, key=lambda mode: float(heights[mode][start : start + FRONT_SAMPLES].max()))
+
+
+def _heights(modes: dict[str, FloatArray], quiet: int) -> dict[str, FloatArray]:
+    return {mode: modulus(samples, SCALES, quiet, 0.0).largest for mode, samples in modes.items()}
+
+
+def _first_above(heights: dict[str, FloatArray], sigmas: float) -> int:
+    """Return the first sample at which any mode stands above `sigmas`, or where the highest does at all."""
+    highest = np.max(list(heights.values()), axis=0)
+    above = np.flatnonzero(highest > sigmas)
+    return int(above[0]) if above.size else int(highest.argmax())

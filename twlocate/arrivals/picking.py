@@ -98,10 +98,10 @@ def _time(samples: FloatArray, candidates: list[Candidate], index: int, quiet: i
     low = max(behind, here.sample - WINDOW * reach, 0)
     high = min(max(ahead, here.sample + here.scale), here.sample + WINDOW * reach, samples.size)
     if block == 1:
-        return refine(samples, here.sample, reach, (low, high), measure_noise(samples[:quiet], step))
+        return refine(samples, here.sample, reach, here.height, (low, high), measure_noise(samples[:quiet], step))
     averaged = samples[: samples.size // block * block].reshape(-1, block).mean(axis=1)
     noise = measure_noise(averaged[: quiet // block], step / np.sqrt(block))
-    front = refine(averaged, here.sample / block, reach / block, (low // block, high // block), noise)
+    front = refine(averaged, here.sample / block, reach / block, here.height, (low // block, high // block), noise)
     middle = (block - 1) / 2
     return replace(
         front,
@@ -114,13 +114,12 @@ def _time(samples: FloatArray, candidates: list[Candidate], index: int, quiet: i
 
 
 def _arrival(trace: Trace, front: Front, candidate: Candidate, noise: Noise) -> Arrival:
-    height = abs(front.height)
     return Arrival(
         time_s=trace.start_s + front.onset / trace.rate_hz,
         u_s=front.u / trace.rate_hz,
         polarity=candidate.polarity,
-        amplitude=height,
-        snr_db=20 * float(np.log10(max(height, 1e-300) / noise.spread)),
+        amplitude=candidate.height,
+        snr_db=20 * float(np.log10(candidate.height / noise.spread)),
         outlier=TRUSTED_OUTLIER + DOUBTFUL_OUTLIER * float(np.exp(-max(candidate.margin, 0.0))),
         rise_s=front.rise / trace.rate_hz,
         shape=front.shape,
