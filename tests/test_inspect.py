@@ -1,22 +1,25 @@
 """``twlocate inspect`` as a user meets it."""
 
+import io
 import json
 import struct
 import subprocess
 import sys
 import time
+from dataclasses import replace
 from pathlib import Path
 
 import numpy as np
 import pytest
 from click.testing import CliRunner
+from rich.console import Console
 
 from twlocate.commands.inspect import inspect
 from twlocate.errors import RecordError
 from twlocate.records import Channel, Clock, Record, StatusChannel, Stretch, write_comtrade
 from twlocate.reporting.inspection import inspection_facts, utc_text
 from twlocate.reporting.inspection_figure import BINS, envelope, inspection_figure, write_inspection_figure
-from twlocate.reporting.inspection_tables import duration, overlap_text
+from twlocate.reporting.inspection_tables import duration, overlap_text, record_block
 
 START_NS = 1772424667_250000000  # 2026-03-02T04:11:07.25Z
 TABLE = "# rate: 500 Hz\n# start: 2026-03-02T04:11:07.25Z\npressure [kPa]\n" + "1\n2\n" * 20
@@ -134,6 +137,38 @@ def test_the_figure_has_a_panel_a_channel_and_its_units(tmp_path):
     figure = inspection_figure([record_of(np.sin(np.arange(5000.0))), record_of(np.zeros(9))], 4)
     assert [axes.get_ylabel() for axes in figure.axes] == ["U\nkV", "", "U\nkV", ""]
     assert [path.name for path in tmp_path.iterdir()] == ["f.png"]
+
+
+def test_a_single_sample_is_drawn(tmp_path):
+    write_inspection_figure([record_of([3.0], stretches=(Stretch(0, 1, 5.0, 10.0),))], tmp_path / "f.png")
+    assert (tmp_path / "f.png").stat().st_size > 0
+
+
+def test_names_are_drawn_as_they_are(tmp_path):
+    """A dollar sign opens a formula in matplotlib, a square bracket a style in rich."""
+    record = record_of(np.arange(40.0))
+    odd = replace(record, channels=(Channel("U$_{x", "[red]V$", np.arange(40.0)),), station="$a^", path=Path("$f.cfg"))
+    odd = replace(odd, status=(StatusChannel("t$\\q$", record.status[0].states),))
+    write_inspection_figure([odd], tmp_path / "f.png")
+    facts = inspection_facts([odd], [])
+    console = Console(file=io.StringIO(), width=80)
+    console.print(record_block(facts["records"][0]))
+    assert "U$_{x" in console.file.getvalue()
+    assert "[red]V$" in console.file.getvalue()
+
+
+@pytest.mark.parametrize("field", ["1e999", "nan", "-1e999", "inf"])
+def test_json_never_meets_an_infinite_number(run, tmp_path, field):
+    write_comtrade(record_of(np.arange(20.0), step=1.0), tmp_path / "c.cfg", "ASCII")
+    lines = (tmp_path / "c.cfg").read_text().split("\n")
+    for index in (2, 4):
+        fields = lines[index].split(",")
+        for place in range(len(fields)):
+            spoilt = [*fields[:place], field, *fields[place + 1 :]]
+            (tmp_path / "c.cfg").write_text("\n".join([*lines[:index], ",".join(spoilt), *lines[index + 1 :]]))
+            result = run("c.cfg", "--json")
+            assert result.exit_code in (0, 2)
+            assert result.exception is None or isinstance(result.exception, SystemExit)
 
 
 def test_a_single_spike_survives_thinning():

@@ -5,6 +5,8 @@ from dataclasses import dataclass
 
 import numpy as np
 import pytest
+from hypothesis import HealthCheck, given, settings
+from hypothesis import strategies as st
 
 from twlocate.errors import RecordError
 from twlocate.records import read
@@ -117,6 +119,7 @@ def test_1991_writes_the_month_first(tmp_path):
         ({"tail": ("BINARY", "1")}, "file type BINARY"),
         ({"tail": ()}, "file type ''"),
         ({"tail": ("ASCII", "1", "\x1a\x1a")}, "Ctrl-Z"),
+        ({"rates": ("0",)}, "no line for the last sample"),
         ({"rates": ("1", "1000,5")}, "8 rows, 5 declared"),
         ({"rates": ("1", "1000,45600")}, "8 rows, 45600 declared"),
         ({"rates": ("2", "1000,8", "1000,8")}, "last samples of the rates do not rise"),
@@ -152,6 +155,41 @@ def test_departures_of_the_cfg(tmp_path, change, what):
 def test_what_cannot_be_read_is_refused_by_line(tmp_path, change, message):
     with pytest.raises(RecordError, match=rf"e\.cfg: .*{message}"):
         read(Written(**change).to(tmp_path))
+
+
+HARMLESS = {
+    "head": ["north,recorder", "north,recorder,1999", "north,recorder,2000", "north,recorder,1997"],
+    "counts": ["3,2A,1D", "9,2A,1D", "3, 2a, 1d", "003,002A,001D,"],
+    "status": [("1,trip,,,0",), ("1,trip",), ("1,trip,x,y,z,0",)],
+    "frequency": ["50", "50.0", "mains", ""],
+    "rates": [
+        ("1", "1000,8"),
+        ("1", "1000.000,45600"),
+        ("0", "0,8"),
+        ("0",),
+        ("2", "1000,8", "1000,8"),
+        ("1", "1000,3"),
+    ],
+    "start": ["02/03/2026,04:11:07.250000", "02/03/26,04:11:07.25", "2026/03/02,04:11:07.250000000"],
+    "trigger": ["02/03/2026,04:11:07.252000", "01/01/1970,00:00:00.000000", ""],
+    "tail": [("ASCII", "1"), ("ascii", ""), ("BINARY", "1"), (), ("ASCII", "1", "\x1a" * 40)],
+    "line_end": ["\r\n", "\n", "\r"],
+    "encoding": ["utf-8", "utf-8-sig", "utf-16"],
+}
+"""Variants of each part that leave samples and times as they are."""
+
+
+@given(st.fixed_dictionaries({part: st.sampled_from(variants) for part, variants in HARMLESS.items()}))
+@settings(max_examples=150, suppress_health_check=[HealthCheck.function_scoped_fixture], deadline=None)
+def test_departures_add_up(tmp_path, changes):
+    record = read(Written(**changes).to(tmp_path))
+    assert record.start_ns == START_NS
+    assert record.channel("U L1").samples.tolist() == [10 * k * 0.5 + 1 for k in range(1, 9)]
+    assert record.channel("I L1").samples.tolist() == [-2 * k for k in range(1, 9)]
+    assert record.status[0].states.tolist() == [1, 0] * 4
+    assert len(record.stretches) == 1
+    np.testing.assert_allclose(record.stretches[0].times_s(), np.arange(8) / 1000, atol=1e-12)
+    assert record.clock.usable
 
 
 def test_any_letter_case_and_either_file(tmp_path):
@@ -303,17 +341,21 @@ def test_missing_code_of_1991_only_where_minus_one_is_out_of_range(tmp_path):
     assert [channel.missing for channel in record.channels] == [8, 0]
 
 
+U_4 = 1e-6 / np.sqrt(3)
+"""Code 4 bounds the clock to 1 µs: rectangular, GUM 4.3.7."""
+
+
 @pytest.mark.parametrize(
     ("codes", "u_s", "usable", "offset_s"),
     [
-        (("0,0", "4,0"), 1e-6 / np.sqrt(3), True, 0),
+        (("0,0", "4,0"), U_4, True, 0),
         (("-5h30,-5h30", "9,0"), 0.1 / np.sqrt(3), True, -19800),
         (("+1,+1", "0,0"), None, True, 3600),
         (("x,x", "F,0"), None, False, None),
-        (("0,0", "4,1"), 1e-6 / np.sqrt(3), False, 0),
-        (("0,0", "4,3"), 1e-6 / np.sqrt(3), True, 0),
+        (("0,0", "4,1"), U_4, False, 0),
+        (("0,0", "4,3"), U_4, True, 0),
         (("0,0", "D,0"), None, False, 0),
-        (("late,0", "4,0"), 1e-6 / np.sqrt(3), True, None),
+        (("late,0", "4,0"), U_4, True, None),
         ((), None, True, None),
     ],
 )
@@ -347,7 +389,72 @@ def test_cff_with_a_wrong_length_and_loose_headers(tmp_path):
         read(cff)
 
 
+def test_what_follows_the_stated_length_of_a_cff_is_no_data(tmp_path):
+    pair = Written(tail=("BINARY", "1")).to(tmp_path, data=binary_rows(8))
+    data = pair.with_suffix(".dat").read_bytes()
+    head = f"--- file type: DAT BINARY: {len(data)} ---\r\n".encode()
+    (tmp_path / "e.cff").write_bytes(b"--- file type: CFG ---\r\n" + pair.read_bytes() + head + data + data[:28])
+    record = read(tmp_path / "e.cff")
+    assert record.n_samples == 8
+    assert whats(record) == ["DAT section of 140 bytes, 112 stated"]
+
+
 def test_the_repairs_say_where_what_and_how_sure(tmp_path):
     analog = tuple(line.replace(",0,-32767", ",,-32767") for line in Written().analog)
     (repair,) = read(Written(analog=analog).to(tmp_path)).repairs
     assert dataclasses.astuple(repair) == ("blank skew", "CFG line 3, 4", "taken as 0", "likely")
+
+
+@pytest.mark.parametrize("field", ["", "  ", "2", "x", "-1"])
+def test_a_state_that_is_none_is_written_down(tmp_path, field):
+    rows = (f"1,0,10,-1,{field}", *Written().rows[1:])
+    record = read(Written(rows=rows).to(tmp_path))
+    assert record.status[0].states.tolist() == [0, 0, 1, 0, 1, 0, 1, 0]
+    assert whats(record) == ["status fields that are neither 0 nor 1"]
+
+
+def test_rows_out_of_shape_are_left_out_and_their_neighbours_kept(tmp_path):
+    rows = [*Written().rows[:3], "4,3000,40", "free text", "", *Written().rows[4:]]
+    record = read(Written(rows=tuple(rows)).to(tmp_path))
+    assert record.n_samples == 7
+    assert starts(record) == [(0, 3, 0.0), (3, 4, 0.004)]
+    assert "rows with too few fields" in whats(record)
+
+
+def test_a_cut_last_row_is_no_sample(tmp_path):
+    record = read(Written(rows=(*Written().rows[:-1], "8,7000,8")).to(tmp_path))
+    assert record.n_samples == 7
+    assert whats(record) == ["rows with too few fields", "7 rows, 8 declared"]
+
+
+def test_a_line_end_in_the_middle_of_a_row_moves_no_field(tmp_path):
+    rows = list(Written().rows)
+    rows[2], rows[3] = "3,2000,30,-3", "1,4,3000,40,-4,0"
+    record = read(Written(rows=tuple(rows)).to(tmp_path))
+    assert record.channel("U L1").samples.tolist() == [10 * k * 0.5 + 1 for k in range(1, 9)]
+    assert record.status[0].states.tolist() == [1, 0] * 4
+
+
+@pytest.mark.parametrize("blank", ["", " ", "   ", "\t"])
+@pytest.mark.parametrize("place", range(2, 4))
+def test_a_blank_reading_is_never_invented(tmp_path, blank, place):
+    rows = [row.split(",") for row in Written().rows]
+    rows[4][place] = blank
+    record = read(Written(rows=tuple(",".join(row) for row in rows)).to(tmp_path))
+    channel = record.channels[place - 2]
+    assert np.flatnonzero(np.isnan(channel.samples)).tolist() == [4]
+    assert whats(record) == ["1 sample missing"]
+
+
+def test_signs_and_leading_zeros_of_counts(tmp_path):
+    rows = tuple(f"{k:04d},{1000 * (k - 1):06d},+{k:06d},-{k:06d},0" for k in range(1, 9))
+    record = read(Written(rows=rows).to(tmp_path))
+    assert record.channel("U L1").samples.tolist() == [0.5 * k + 1 for k in range(1, 9)]
+    assert not record.repairs
+
+
+def test_decimals_in_an_ascii_file_are_counts_too(tmp_path):
+    rows = tuple(f"{k},{1000 * (k - 1)},{k + 0.25},{-k * 1e-3:e},1" for k in range(1, 9))
+    record = read(Written(rows=rows).to(tmp_path))
+    assert record.channel("U L1").samples.tolist() == [0.5 * (k + 0.25) + 1 for k in range(1, 9)]
+    assert not record.repairs

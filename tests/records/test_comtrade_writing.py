@@ -103,8 +103,11 @@ def test_an_independent_reader_sees_the_same(tmp_path, file_type):
     np.testing.assert_allclose(other.time, np.arange(90) / 1e6, atol=1e-12)
 
 
-def test_writing_twice_gives_the_same_bytes(tmp_path):
+@pytest.mark.parametrize("code", "123456789AB0F")
+def test_writing_twice_gives_the_same_bytes(tmp_path, code):
     write_comtrade(record_of(COUNTS), tmp_path / "a.cfg")
+    text = (tmp_path / "a.cfg").read_text()
+    (tmp_path / "a.cfg").write_bytes(text.replace("\n3,0\n", f"\n{code},0\n").replace("\n", "\r\n").encode())
     write_comtrade(read(tmp_path / "a.cfg"), tmp_path / "b.cfg")
     for suffix in (".cfg", ".dat"):
         assert (tmp_path / f"a{suffix}").read_bytes() == (tmp_path / f"b{suffix}").read_bytes()
@@ -123,7 +126,9 @@ def test_single_precision_readings_pass_through_float32(tmp_path):
     samples = np.random.default_rng(8).normal(size=90).astype(np.float32).astype(float)
     record = dataclasses.replace(record_of(COUNTS), channels=(Channel("p", "kPa", samples),))
     write_comtrade(record, tmp_path / "e.cff", "FLOAT32")
-    np.testing.assert_array_equal(read(tmp_path / "e.cff").channels[0].samples, samples)
+    back = read(tmp_path / "e.cff").channels[0]
+    np.testing.assert_array_equal(back.samples, samples)
+    assert (back.step, back.low, back.high) == (None, None, None)  # computed readings show no converter
 
 
 def with_samples(samples, **facts):

@@ -55,6 +55,18 @@ def test_broadcast_time_reference_counts_samples_from_midnight(tmp_path):
     assert not record.repairs
 
 
+def test_a_time_reference_is_rounded_to_the_nearest_nanosecond(tmp_path):
+    soundfile.write(tmp_path / "s.wav", SAMPLES, 44_100, "PCM_16")
+    with_bext(tmp_path / "s.wav", "1970-01-01", "00:00:00", 7)  # 158730.16 ns
+    assert read(tmp_path / "s.wav").start_ns == 158_730
+    soundfile.write(tmp_path / "t.wav", SAMPLES, 44_100, "PCM_16")
+    with_bext(tmp_path / "t.wav", "1970-01-01", "00:00:00", 11)  # 249433.11 ns
+    assert read(tmp_path / "t.wav").start_ns == 249_433
+    soundfile.write(tmp_path / "u.wav", SAMPLES, 44_100, "PCM_16")
+    with_bext(tmp_path / "u.wav", "1970-01-01", "00:00:00", 17)  # 385487.53 ns
+    assert read(tmp_path / "u.wav").start_ns == 385_488
+
+
 def test_a_broadcast_chunk_at_odds_with_itself_is_written_down(tmp_path):
     soundfile.write(tmp_path / "s.wav", SAMPLES, RATE_HZ, "PCM_16")
     with_bext(tmp_path / "s.wav", "2026-03-02", "09:00:00", RATE_HZ)

@@ -2,6 +2,8 @@
 
 import numpy as np
 import pytest
+from hypothesis import HealthCheck, given, settings
+from hypothesis import strategies as st
 
 from twlocate.errors import RecordError
 from twlocate.records import read
@@ -187,3 +189,49 @@ def test_damaged_bytes_do_not_turn_the_whole_text_into_another_language(tmp_path
     assert record.station.startswith("Überlandwerk Süd")
     assert record.channels[0].unit == "µbar"
     assert record.repairs[0].what == "bytes that are not UTF-8 in a text that else is"
+
+
+@given(
+    columns=st.lists(st.lists(st.floats(allow_nan=False, allow_infinity=False, width=64), min_size=3, max_size=3),
+                     min_size=1, max_size=4),
+    start=st.integers(0, 2**61), step_us=st.integers(1, 10**6), delimiter=st.sampled_from([",", ";", "\t"]),
+    comma=st.booleans(), line_end=st.sampled_from(["\n", "\r\n"]), trailing=st.booleans(),
+)  # fmt: skip
+@settings(max_examples=120, suppress_health_check=[HealthCheck.function_scoped_fixture], deadline=None)
+def test_whatever_is_written_comes_back(tmp_path, columns, start, step_us, delimiter, comma, line_end, trailing):
+    """Shortest decimals of any doubles, nanosecond times, any delimiter: the same numbers to the last bit."""
+    times = [np.datetime64(start + 1000 * step_us * row, "ns") for row in range(3)]
+    header = ["time", *(f"c{k} [V]" for k in range(len(columns)))]
+    rows = [[f"{time}Z", *(repr(column[row]) for column in columns)] for row, time in enumerate(times)]
+    if comma and delimiter != ",":
+        rows = [[row[0], *(field.replace(".", ",") for field in row[1:])] for row in rows]
+    text = line_end.join(delimiter.join(row) for row in [header, *rows]) + (line_end if trailing else "")
+    record = read(table(tmp_path, text))
+    assert record.start_ns == start
+    assert [channel.samples.tolist() for channel in record.channels] == columns
+    np.testing.assert_allclose(record.stretches[0].times_s(), np.arange(3) * step_us * 1e-6, rtol=1e-12)
+    assert not record.repairs
+
+
+@pytest.mark.parametrize(
+    ("rows", "assumed", "sure", "start"),
+    [
+        (["13/03/2026 04:11:07.250", "13/03/2026 04:11:07.260"], "dd/mm", True, "2026-03-13T04:11:07.25"),
+        (["03/13/2026 4:11:07.250", "03/13/2026 4:11:07.260"], "mm/dd", True, "2026-03-13T04:11:07.25"),
+        (["02.03.2026 04:11:07.250", "02.03.2026 04:11:07.260"], "dd/mm", False, "2026-03-02T04:11:07.25"),
+    ],
+)
+def test_dates_of_spreadsheets(tmp_path, rows, assumed, sure, start):
+    record = read(table(tmp_path, "time;p [kPa]\n" + "".join(f"{row};{k}\n" for k, row in enumerate(rows))))
+    assert record.start_ns == np.datetime64(start, "ns").astype(np.int64)
+    assert record.repairs[0].assumed == f"read as {assumed}"
+    assert record.repairs[0].confidence == ("sure" if sure else "guess")
+    assert record.clock.usable == sure
+    assert record.stretches[0].rate_hz == pytest.approx(100.0)
+
+
+def test_dates_of_spreadsheets_in_two_columns(tmp_path):
+    text = "Date,Time,p [kPa]\n31/12/2025,23:59:59.5,1\n01/01/2026,00:00:00.0,2\n01/01/2026,00:00:00.5,3\n"
+    record = read(table(tmp_path, text))
+    assert record.start_ns == np.datetime64("2025-12-31T23:59:59.5", "ns").astype(np.int64)
+    assert record.stretches[0].rate_hz == pytest.approx(2.0)

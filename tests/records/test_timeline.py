@@ -173,3 +173,27 @@ def test_words_of_the_log():
     log.add("mixed", "DAT", "x", "sure")
     log.add("mixed", "CFG line 1", "x", "sure")
     assert [repair.where for repair in log.repairs] == ["CFG line 3, 4, 5", "channel 'a', 'b'", "DAT; CFG line 1"]
+
+
+def test_unsigned_stamps_before_the_trigger_are_negative():
+    result, log = of((np.arange(100) * 100 - 4100) % 2**32, [(10_000, 100)])
+    assert result.first_stamp_s == pytest.approx(-0.0041)
+    assert result.stretches[0].start_s == 0.0
+    assert log.repairs[0].what == "stamps wrap 1 time at 4294967296"
+
+
+def test_the_step_at_a_change_of_rate_may_belong_to_either_side():
+    slow, fast = np.arange(10) * 10_000, np.arange(10) * 100
+    for step in (10_000, 100):
+        stamps = np.concatenate([slow, slow[-1] + step + fast])
+        result, log = of(stamps, [(100, 10), (10_000, 20)])
+        assert [(s.first, s.rate_hz) for s in result.stretches] == [(0, 100.0), (10, 10_000.0)]
+        assert "gap" not in "".join(repair.what for repair in log.repairs)
+        np.testing.assert_allclose(times_of(result), (stamps - stamps[0]) * 1e-6, atol=1e-9)
+
+
+def test_stamps_in_another_unit_still_show_their_gaps():
+    stamps = np.concatenate([np.arange(10) * 10, 5000 + np.arange(10) * 10])
+    result, log = of(stamps, [(100, 20)], tick_s=1e-9)
+    assert [(s.first, round(s.start_s, 9)) for s in result.stretches] == [(0, 0.0), (10, 5.0)]
+    assert [repair.what for repair in log.repairs][1] == "1 gap in the times"

@@ -31,6 +31,8 @@ class Times:
     zero_ns: int | None
     tick_ns: float
     offset_stated: bool = True
+    doubt: str = ""
+    """What makes the absolute time doubtful, if anything."""
 
 
 def epoch_unit_ns(size: float, unit_ns: int | None) -> int | None:
@@ -120,6 +122,7 @@ def _stretches(
     if times is None:
         raise RecordError("nothing is called time and no setting such as 'rate: 500 Hz' gives the sampling rate")
     stretches, doubts = stretches_by_stamps(times.seconds, times.tick_ns * 1e-9, "the time column", log)
+    doubts += [times.doubt] if times.doubt else []
     measured = stretches[0].rate_hz
     if rate_hz is None or abs(measured / rate_hz - 1.0) <= 1e-3:
         return stretches, doubts

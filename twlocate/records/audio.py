@@ -20,7 +20,8 @@ from twlocate.records.windows import windowed_stretches
 BITS = {"PCM_S8": 8, "PCM_U8": 8, "PCM_16": 16, "PCM_24": 24, "PCM_32": 32}
 DATE_OFFSET, DATE_LENGTH, TIME_LENGTH = 320, 10, 8
 """Of the bext chunk: description 256, originator 32, reference 32, then date, time and the 64-bit time reference."""
-BLOCK_FRAMES = 1 << 16
+BLOCK_FRAMES = 4096
+UNSTATED = 0xFFFFFFFF
 MAX_CHUNKS = 1000
 MAX_CHUNK_BYTES = 1 << 16
 
@@ -51,6 +52,7 @@ def _read(path: Path, file: Any, span: tuple[float, float] | None, log: RepairLo
         what = f"{len(samples)} samples where the header promises {stop - first}"
         log.add(what, "sound data", "what can be decoded is read", SURE)
     channels = tuple(_channel(index, column, file.subtype) for index, column in enumerate(samples.T, start=1))
+    note_cut(path, log)
     settings = {"rate": repr(file.samplerate)} | broadcast_start(path, file.samplerate, log)
     record = assemble(path, f"{file.format} {file.subtype}", channels, None, settings, log)
     return replace(record, stretches=(replace(stretch, count=len(samples)),), repairs=log.repairs)
@@ -107,7 +109,17 @@ def broadcast_start(path: Path, rate_hz: int, log: RepairLog) -> dict[str, str]:
 
 
 def riff_chunk(path: Path, name: bytes) -> bytes | None:
-    """Return the content of a chunk of a RIFF or RF64 file; None where there is none."""
+    """Return the first `MAX_CHUNK_BYTES` of a chunk of a RIFF or RF64 file; None where there is none."""
+    place = riff_place(path, name)
+    if place is None:
+        return None
+    with path.open("rb") as file:
+        file.seek(place[0])
+        return file.read(min(place[1], MAX_CHUNK_BYTES))
+
+
+def riff_place(path: Path, name: bytes) -> tuple[int, int] | None:
+    """Return where the content of a chunk starts and the size it states; None where there is none."""
     with path.open("rb") as file:
         head = file.read(12)
         if head[:4] not in (b"RIFF", b"RF64") or head[8:] != b"WAVE":
@@ -118,6 +130,16 @@ def riff_chunk(path: Path, name: bytes) -> bytes | None:
                 return None
             size = struct.unpack_from("<I", header, 4)[0]
             if header[:4] == name:
-                return file.read(min(size, MAX_CHUNK_BYTES))
+                return file.tell(), size
             file.seek(size + size % 2, 1)
     return None
+
+
+def note_cut(path: Path, log: RepairLog) -> None:
+    """Write down a data chunk that states more bytes than there are (the size FFFFFFFF means not stated)."""
+    place = riff_place(path, b"data")
+    if place is None or place[1] == UNSTATED:
+        return
+    there = path.stat().st_size - place[0]
+    if there < place[1]:
+        log.add(f"{there} bytes of sound, {place[1]} stated", "data chunk", "what is there is read", SURE)

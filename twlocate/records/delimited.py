@@ -1,5 +1,6 @@
 """Delimited numbers, fast where the text is regular and forgiving where it is not."""
 
+import re
 import warnings
 from collections.abc import Sequence
 
@@ -8,6 +9,11 @@ from numpy.typing import NDArray
 
 from twlocate.arrays import FloatArray
 
+INTEGERS = np.iinfo(np.int64)
+"""Numbers beyond come out of numpy's parser as the largest, not as a fault."""
+BLANK_FIELD = re.compile(rb",[ \t]+(?=,)")
+"""Blanks between commas: numpy's parser takes such a field for 0, or for the number before it."""
+
 
 def regular_numbers(data: bytes, columns: int) -> NDArray[np.number] | None:
     """Return comma-delimited rows of `columns` numbers, or None where the text is not that regular.
@@ -15,9 +21,11 @@ def regular_numbers(data: bytes, columns: int) -> NDArray[np.number] | None:
     Whole numbers come as int64, decimals as float64 with NaN for a blank field between commas. Rows whose numbers
     of fields differ but add up are the caller's to notice, by the row numbers.
     """
-    flat = data.strip().replace(b"\n", b",")
+    flat = data.strip().replace(b"\r\n", b"\n").replace(b"\r", b"\n").replace(b"\n", b",")
+    if b" " in flat or b"\t" in flat:
+        flat = BLANK_FIELD.sub(b",", flat)
     numbers = _parsed(flat, np.int64)
-    if numbers is None:
+    if numbers is None or (numbers.size and not INTEGERS.min < numbers.min() <= numbers.max() < INTEGERS.max):
         blanks = flat.replace(b",,", b",nan,").replace(b",,", b",nan,")
         numbers = _parsed(blanks, np.float64)
     if numbers is None or numbers.size % columns:

@@ -18,6 +18,10 @@ ISO_8601 = re.compile(
 )
 
 
+SLASHED = re.compile(r"(\d{1,2})[/.](\d{1,2})[/.](\d{4})[ T]+(\d\d?)(:\d\d(?::\d\d(?:[.,]\d+)?)?)")
+"""A date as spreadsheets write it, its day and month in either order."""
+
+
 @dataclass(frozen=True)
 class Moment:
     """A calendar time as integer nanoseconds since 1970-01-01 on the clock it was written by."""

@@ -11,7 +11,7 @@ from numpy.typing import NDArray
 
 from twlocate.errors import RecordError
 from twlocate.records.assembling import UNIT_NS, Times, as_readings, assemble, epoch_unit_ns
-from twlocate.records.moments import SECOND_NS
+from twlocate.records.moments import SECOND_NS, exact_decimal
 from twlocate.records.record import Channel, Record
 from twlocate.records.repairs import GUESS, LIKELY, SURE, RepairLog
 
@@ -113,7 +113,7 @@ def _times(values: NDArray[np.generic], unit: str | None, log: RepairLog) -> Tim
     scale = epoch_ns or UNIT_NS.get(unit or "", SECOND_NS)
     if epoch_ns is None:
         return Times(numbers.astype(np.float64) * (scale * 1e-9), None, _float_tick_ns(numbers, scale))
-    zero = int(numbers[0]) * scale if numbers.dtype.kind in "iu" else round(float(numbers[0]) * scale)
+    zero = int(numbers[0]) * scale if numbers.dtype.kind in "iu" else exact_decimal(repr(float(numbers[0])), scale)
     if numbers.dtype.kind == "f":
         grain = float(np.spacing(np.abs(numbers[0]).astype(numbers.dtype))) * scale
         log.add(f"absolute time as a float, {grain:.3g} ns apart", "time array", "taken as it is", GUESS)

@@ -10,7 +10,7 @@ from twlocate.arrays import FloatArray
 from twlocate.errors import RecordError
 from twlocate.records.assembling import as_readings, assemble
 from twlocate.records.delimited import forgiving_numbers
-from twlocate.records.moments import ISO_8601, NUMBER
+from twlocate.records.moments import ISO_8601, NUMBER, SLASHED
 from twlocate.records.record import Channel, Record
 from twlocate.records.repairs import SURE, RepairLog
 from twlocate.records.spacing import counted
@@ -22,9 +22,13 @@ Span = tuple[float, float]
 
 SETTING = re.compile(r"#+\s*([A-Za-z][\w ]*?)\s*[:=]\s*(.*\S)\s*")
 COLUMN = re.compile(r"(.*?)\s*[\[(]([^\[\]()]*)[\])]\s*")
+UNIT_ALONE = re.compile(r"(?:[\[(][^\[\]()]*[\])])?")
 SPACED_TITLE = re.compile(r"\S+(?:\s*[\[(][^\[\]()]*[\])])?")
 TIME_NAME = re.compile(r"(t|time|timestamp|date|datetime|date time|utc|elapsed)(\s.*)?", re.IGNORECASE)
-TIME_FIELD = re.compile(rf"{ISO_8601.pattern}|\d\d:\d\d(:\d\d(\.\d+)?)?")
+TIME_FIELD = re.compile(
+    rf"{ISO_8601.pattern}|{SLASHED.pattern}|\d\d?[/.]\d\d?[/.]\d{{4}}|\d\d?:\d\d(:\d\d([.,]\d+)?)?", re.IGNORECASE
+)
+"""A date, a time of day, or both."""
 BLANK = ("", "nan", "NaN", "NAN", "null", "-", "—", "N/A")
 MOST = 0.7
 DELIMITERS = ("\t", ";", ",", "|")
@@ -124,11 +128,15 @@ def _header(lines: list[list[str]], width: int) -> tuple[list[str], list[str]]:
     rows = [row for row in lines if len(row) == width]
     if not rows:
         return [f"column {index + 1}" for index in range(width)], [""] * width
-    if len(rows) == 2 and all(not field or (COLUMN.fullmatch(field) and field[0] in "([") for field in rows[1]):
+    if len(rows) == 2 and all(UNIT_ALONE.fullmatch(field) for field in rows[1]):
         return rows[0], [field.strip("()[] ") for field in rows[1]]
-    matches = [COLUMN.fullmatch(field) for field in rows[-1]]
-    names = [match[1] if match else field for match, field in zip(matches, rows[-1], strict=True)]
-    return names, [match[2].strip() if match else "" for match in matches]
+    pairs = [_name_and_unit(title) for title in rows[-1]]
+    return [name for name, _ in pairs], [unit for _, unit in pairs]
+
+
+def _name_and_unit(title: str) -> tuple[str, str]:
+    match = COLUMN.fullmatch(title)
+    return (match[1], match[2].strip()) if match else (title, "")
 
 
 def _time_columns(layout: Layout) -> list[int]:
@@ -137,7 +145,7 @@ def _time_columns(layout: Layout) -> list[int]:
     if names[:2] == ["date", "time"]:
         return [0, 1]
     first = split(layout.rows[0], layout.delimiter)
-    dated = [index for index, field in enumerate(first) if ISO_8601.fullmatch(field)]
+    dated = [index for index, field in enumerate(first) if ISO_8601.fullmatch(field) or SLASHED.fullmatch(field)]
     named = [index for index, name in enumerate(names) if TIME_NAME.fullmatch(name)]
     return (dated or named)[:1]
 

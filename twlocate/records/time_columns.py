@@ -3,14 +3,15 @@
 import re
 import warnings
 from collections.abc import Sequence
+from dataclasses import replace
 
 import numpy as np
 from numpy.typing import NDArray
 
 from twlocate.errors import RecordError
 from twlocate.records.assembling import UNIT_NS, Times, epoch_unit_ns
-from twlocate.records.moments import ISO_8601, NUMBER, SECOND_NS, exact_decimal, iso_moment, resolution_ns
-from twlocate.records.repairs import LIKELY, RepairLog
+from twlocate.records.moments import ISO_8601, NUMBER, SECOND_NS, SLASHED, exact_decimal, iso_moment, resolution_ns
+from twlocate.records.repairs import GUESS, LIKELY, SURE, RepairLog
 
 SECONDS_OF_UTC = "2026-03-02T04:11:07.Z"
 """The form of a UTC time, before the digits of a second."""
@@ -20,7 +21,7 @@ PICO = 1000
 
 def time_pattern(first: str) -> re.Pattern[str]:
     """Return what every time must look like when the first looks like this."""
-    return ISO_8601 if ISO_8601.fullmatch(first) else NUMBER
+    return next((pattern for pattern in (ISO_8601, SLASHED) if pattern.fullmatch(first)), NUMBER)
 
 
 def parse_times(texts: Sequence[str], unit: str, log: RepairLog) -> Times:
@@ -40,6 +41,9 @@ def parse_times(texts: Sequence[str], unit: str, log: RepairLog) -> Times:
     RecordError
         A row holds no existing day or time, or the unit is unknown.
     """
+    if SLASHED.fullmatch(texts[0]):
+        texts, doubt = _iso_texts(texts, log)
+        return replace(_calendar_times(texts), doubt=doubt)
     if ISO_8601.fullmatch(texts[0]):
         return _calendar_times(texts)
     if unit and unit not in UNIT_NS:
@@ -47,6 +51,19 @@ def parse_times(texts: Sequence[str], unit: str, log: RepairLog) -> Times:
     if not NUMBER.fullmatch(texts[0]):
         raise RecordError(f"row 1: the time {texts[0]!r} is neither a number nor an ISO 8601 time")
     return _counted_times(texts, UNIT_NS.get(unit), log)
+
+
+def _iso_texts(texts: Sequence[str], log: RepairLog) -> tuple[list[str], str]:
+    """Return dates such as 02/03/2026 in ISO 8601, and a doubt where nothing tells the day from the month."""
+    parts = [match.groups() for text in texts if (match := SLASHED.fullmatch(text))]
+    first, second = (max(int(part[index]) for part in parts) for index in (0, 1))
+    month_first = second > 12
+    order = "mm/dd" if month_first else "dd/mm"
+    sure = first > 12 or month_first
+    log.add("dates not in ISO 8601", "time column", f"read as {order}", SURE if sure else GUESS)
+    month, day = (0, 1) if month_first else (1, 0)
+    iso = [f"{part[2]}-{part[month]:0>2}-{part[day]:0>2} {part[3]:0>2}{part[4]}" for part in parts]
+    return iso, "" if sure else "day and month could be exchanged"
 
 
 def _calendar_times(texts: Sequence[str]) -> Times:

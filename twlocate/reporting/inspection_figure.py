@@ -48,6 +48,7 @@ def write_inspection_figure(records: Sequence[Record], path: Path) -> None:
         with warnings.catch_warnings():
             warnings.filterwarnings("ignore", "Glyph .* missing")  # a name in letters the font lacks shows as boxes
             inspection_figure(records, panels).savefig(passing, dpi=110)
+        Path(passing).chmod(0o644)
         Path(passing).replace(path)
     finally:
         Path(passing).unlink(missing_ok=True)
@@ -85,8 +86,10 @@ def _draw_record(record: Record, axes: "Sequence[Axes] | object") -> None:
         panel.spines[["top", "right"]].set_visible(False)
         if record.trigger_s is not None:
             panel.axvline(record.trigger_s, color=TRIGGER_INK, linewidth=0.9, linestyle=":", zorder=3)
-    own[0].set_xlim(min(start for start, _ in ends), max(end for _, end in ends) or 1.0)
-    own[0].set_title(f"{record.path.name}   {record.station}", loc="left", fontsize=9, fontweight="bold")
+    left, right = min(start for start, _ in ends), max(end for _, end in ends)
+    own[0].set_xlim(left, right if right > left else left + 1.0 / record.stretches[0].rate_hz)
+    title = f"{record.path.name}   {record.station}"
+    own[0].set_title(title, loc="left", fontsize=9, fontweight="bold", parse_math=False)
     dotted = " (dotted: trigger)" if record.trigger_s is not None else ""
     own[-1].set_xlabel(f"time from the record's start, s{dotted}", fontsize=8)
 
@@ -96,7 +99,7 @@ def _draw_channel(panel: "Axes", record: Record, channel: Channel) -> None:
         times, samples = envelope(stretch, channel.samples, BINS)
         panel.plot(times + channel.skew_s, samples, color=INK, linewidth=0.7)
     label = f"{channel.name}\n{channel.unit}" if channel.unit else channel.name
-    panel.set_ylabel(label, rotation=0, ha="right", va="center", fontsize=8)
+    panel.set_ylabel(label, rotation=0, ha="right", va="center", fontsize=8, parse_math=False)
 
 
 def envelope(stretch: Stretch, samples: FloatArray, bins: int) -> tuple[FloatArray, FloatArray]:
@@ -133,7 +136,8 @@ def _draw_status(panel: "Axes", record: Record, status: Sequence[StatusChannel])
     for row, channel in enumerate(status):
         for stretch in record.stretches:
             panel.broken_barh(_ones(stretch, channel), (row - 0.35, 0.7), color=STATUS_INK)
-    panel.set_yticks(range(len(status)), [channel.name for channel in status], fontsize=min(7.0, 60.0 / len(status)))
+    names = [channel.name for channel in status]
+    panel.set_yticks(range(len(names)), names, fontsize=min(7.0, 60.0 / len(names)), parse_math=False)
     panel.set_ylim(len(status) - 0.5, -0.5)
 
 

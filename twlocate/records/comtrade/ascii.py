@@ -12,7 +12,7 @@ from twlocate.errors import RecordError
 from twlocate.records.comtrade.scaling import Scaling, scale_block
 from twlocate.records.comtrade.timeline import NO_STAMP
 from twlocate.records.delimited import forgiving_numbers, regular_numbers
-from twlocate.records.repairs import SURE, RepairLog
+from twlocate.records.repairs import GUESS, SURE, RepairLog
 
 BLOCK_BYTES = 1 << 18
 """Text is parsed in blocks of about this size, so that a block and its numbers stay in the processor's cache."""
@@ -77,7 +77,10 @@ def parse_ascii(file: BinaryIO, length: int, scaling: Scaling, n_status: int, lo
         numbers[place] = as_integers(block[:, 0])
         ticks[place] = as_integers(block[:, 1])
         scale_block(block[:, 2 : 2 + n_analog].T, scaling, readings[:, place])
-        states[:, place] = block[:, 2 + n_analog :].T == 1
+        fields = block[:, 2 + n_analog :].T
+        states[:, place] = fields == 1
+        if np.any((fields != 0) & (fields != 1)):
+            log.add("status fields that are neither 0 nor 1", "DAT", "taken as 0", GUESS)
         count += len(block)
     if count == 0:
         raise RecordError(f"the DAT has no row of {columns} fields, as {n_analog} analog and {n_status} status need")

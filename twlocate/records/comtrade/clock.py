@@ -20,7 +20,9 @@ def quality_u_s(code: str) -> float:
     return QUALITY_BOUND_S[code] / math.sqrt(3.0)
 
 
-def stated_clock(quality: str | None, leap_second: str | None, offset_s: int | None, doubts: list[str]) -> Clock:
+def stated_clock(
+    quality: str | None, leap_second: str | None, offset_s: int | None, resolution_s: float, doubts: list[str]
+) -> Clock:
     """Return the clock that the time-quality fields state.
 
     Parameters
@@ -31,10 +33,15 @@ def stated_clock(quality: str | None, leap_second: str | None, offset_s: int | N
         Leap-second indicator: 0 none, 1 added, 2 taken away, 3 unknown; None where the file has none.
     offset_s
         Offset from UTC of the clock the file is stamped by; None where not stated.
+    resolution_s
+        Size of the last digit of the start; a note tells when it is coarser than the clock, and it is for whoever
+        uses the start to count it.
     doubts
         Whatever else makes the absolute time unusable, one sentence each.
     """
     u_s, usable, notes = _quality(quality)
+    if u_s is not None and resolution_s > u_s:
+        notes.append(f"the start is given to {resolution_s:g} s, coarser than the clock")
     if leap_second in ("1", "2"):
         notes.append("a leap second falls inside the record: a second may be counted twice or not at all")
     if leap_second == "3":

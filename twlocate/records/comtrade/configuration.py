@@ -4,7 +4,7 @@ import re
 from dataclasses import dataclass
 
 from twlocate.errors import RecordError
-from twlocate.records.comtrade.dates import read_moment, read_time_code
+from twlocate.records.comtrade.dates import DATE_AND_TIME, read_moment, read_time_code
 from twlocate.records.moments import NUMBER, Moment
 from twlocate.records.repairs import GUESS, LIKELY, SURE, RepairLog
 
@@ -66,7 +66,7 @@ class Configuration:
     line_frequency_hz: float | None
     rates: tuple[RateLine, ...]
     """Empty where the file declares none: the stamps then rule."""
-    declared_rows: int
+    declared_rows: int | None
     start: Moment | None
     trigger: Moment | None
     file_type: str
@@ -110,6 +110,11 @@ class Lines:
         self.taken += 1
         return self.lines[self.taken - 1]
 
+    @property
+    def next_is_a_date(self) -> bool:
+        """Whether the line to come is a date and time."""
+        return bool(self.left) and DATE_AND_TIME.fullmatch(self.lines[self.taken]) is not None
+
     def take_or(self, default: str) -> str:
         """Return the next line, or `default` past the end."""
         return self.take("") if self.left else default
@@ -133,7 +138,7 @@ def parse_configuration(text: str, log: RepairLog) -> Configuration:
     rates, declared_rows = _rates(lines, log)
     month_first = edition == 1991
     start = read_moment(lines.take("the start time"), lines.where, month_first, log)
-    trigger = read_moment(lines.take("the trigger time"), lines.where, month_first, log)
+    trigger = read_moment(lines.take_or(""), lines.where, month_first, log)
     file_type = _file_type(lines, log)
     multiplier = _time_multiplier(lines, edition, log)
     offset, quality, leap = _time_codes(lines, edition, log)
@@ -219,7 +224,7 @@ def _scale(fields: list[str], where: str, log: RepairLog) -> tuple[float, float]
 
 
 def _ratio(text: str) -> float | None:
-    return float(text) if NUMBER.fullmatch(text) else None
+    return float(text) if NUMBER.fullmatch(text) and abs(float(text)) <= LARGEST else None
 
 
 def _number_or(text: str, default: float, name: str, where: str, log: RepairLog) -> float:
@@ -243,13 +248,13 @@ def _status_line(lines: Lines, log: RepairLog) -> StatusLine:
 
 def _optional_number(line: str, where: str, log: RepairLog) -> float | None:
     text = line.strip().rstrip(",")
-    if NUMBER.fullmatch(text) and float(text) >= 0.0:
+    if NUMBER.fullmatch(text) and 0.0 <= float(text) <= LARGEST:
         return float(text) or None
     log.add(f"line frequency {text[:20]!r}", where, "unknown", SURE)
     return None
 
 
-def _rates(lines: Lines, log: RepairLog) -> tuple[tuple[RateLine, ...], int]:
+def _rates(lines: Lines, log: RepairLog) -> tuple[tuple[RateLine, ...], int | None]:
     """Return the rate lines (none where the stamps rule) and the declared number of rows."""
     text = lines.take("the number of rates").strip().rstrip(",")
     if not text.isdecimal() or len(text) > 6:
@@ -257,6 +262,9 @@ def _rates(lines: Lines, log: RepairLog) -> tuple[tuple[RateLine, ...], int]:
     count = int(text)
     if count > lines.left:
         raise RecordError(f"{lines.where} declares {count} sampling rates, but only {lines.left} lines follow")
+    if count == 0 and lines.next_is_a_date:
+        log.add("no line for the last sample", lines.where, "all rows are read", SURE)
+        return (), None
     read = [_rate_line(lines) for _ in range(max(count, 1))]
     rates = tuple(rate for rate in read if rate.rate_hz > 0.0)
     if len(rates) < count:

@@ -14,6 +14,7 @@ SECTION = re.compile(
 )
 STANDARD_SECTION = re.compile(rb"^--- file type: ", re.IGNORECASE)
 HEAD_BYTES = 1 << 20
+LONGEST_HEADER = 200
 COMPANIONS = (".hdr", ".inf")
 
 
@@ -77,10 +78,11 @@ def _cff_parts(path: Path, log: RepairLog) -> Parts:
 
 def _head_to_data(path: Path) -> bytes:
     """Return the file up to its DAT section header, or all of it where there is none."""
-    head = b""
+    head = bytearray()
     with path.open("rb") as file:
         while block := file.read(HEAD_BYTES):
+            searched = max(0, len(head) - LONGEST_HEADER)
             head += block
-            if any(match[1].upper() == b"DAT" for match in SECTION.finditer(head)):
+            if any(match[1].upper() == b"DAT" for match in SECTION.finditer(head, searched)):
                 break
-    return head
+    return bytes(head)

@@ -1,6 +1,6 @@
 """A COMTRADE record from its parts."""
 
-import math
+from dataclasses import replace
 from pathlib import Path
 
 import numpy as np
@@ -24,6 +24,8 @@ from twlocate.records.windows import windowed_stretches
 
 NUMBER_SHARE = 0.9
 """Rows numbered one after another in at least this share tell that the row layout is right."""
+UNBOUNDED = 1e37
+"""A range as wide as single precision states no converter."""
 PROBED_ROWS = 64
 HEAD_BYTES = 4096
 NUMBER_TEXT = b"0123456789+-., \t\r\neENnAaIiFf\x1a"
@@ -53,7 +55,7 @@ def read_comtrade(path: Path, span: tuple[float, float] | None) -> Record:
     return Record(
         path=path,
         format=f"COMTRADE {configuration.edition} {rows.file_type}",
-        channels=_channels(configuration.analog, analog, log),
+        channels=_channels(configuration.analog, analog, file_type, log),
         stretches=stretches,
         station=configuration.station,
         device=configuration.device,
@@ -116,7 +118,7 @@ def _numbered(parts: Parts, file_type: str, n_analog: int, n_status: int) -> boo
 
 def _check_row_count(rows: int, configuration: Configuration, log: RepairLog) -> None:
     declared = configuration.declared_rows
-    if rows != declared:
+    if declared is not None and rows != declared:
         assumed = "only what is there is read" if rows < declared else "all rows kept"
         log.add(f"{rows} rows, {declared} declared", "DAT", assumed, SURE)
 
@@ -132,18 +134,21 @@ def _samples(
     return np.hstack(readings), np.hstack(states)
 
 
-def _channels(lines: tuple[AnalogLine, ...], readings: FloatArray, log: RepairLog) -> tuple[Channel, ...]:
+def _channels(
+    lines: tuple[AnalogLine, ...], readings: FloatArray, file_type: str, log: RepairLog
+) -> tuple[Channel, ...]:
     """Return the analog channels; missing samples and ranges that cannot be true go to the log."""
-    channels = tuple(_channel(line, samples, log) for line, samples in zip(lines, readings, strict=True))
+    channels = tuple(_channel(line, samples, file_type, log) for line, samples in zip(lines, readings, strict=True))
     note_missing(channels, log)
     return channels
 
 
-def _channel(line: AnalogLine, samples: FloatArray, log: RepairLog) -> Channel:
+def _channel(line: AnalogLine, samples: FloatArray, file_type: str, log: RepairLog) -> Channel:
+    stepless = file_type == "FLOAT32" and abs(line.a) == 1.0  # readings as computed, not converter counts
     low, high = _converter_range(line, samples, log)
     return Channel(
         name=line.name, unit=line.unit, samples=samples, phase=line.phase, skew_s=line.skew_us * 1e-6,
-        step=abs(line.a) or None, offset=line.b, low=low, high=high,
+        step=None if stepless else abs(line.a) or None, offset=line.b, low=low, high=high,
         side={"P": "primary", "S": "secondary"}.get(line.side, ""),
         ratio=line.primary / line.secondary if line.primary and line.secondary else None,
     )  # fmt: skip
@@ -152,7 +157,7 @@ def _channel(line: AnalogLine, samples: FloatArray, log: RepairLog) -> Channel:
 def _converter_range(line: AnalogLine, samples: FloatArray, log: RepairLog) -> tuple[float | None, float | None]:
     """Return the least and greatest reading the converter can give; None each where the stated range is not that."""
     low, high = sorted((line.a * line.low + line.b, line.a * line.high + line.b))
-    if not (math.isfinite(low) and math.isfinite(high) and low < high):
+    if not 0.0 < high - low < UNBOUNDED:
         return None, None
     margin = 0.5 * abs(line.a)
     if np.fmin.reduce(samples) < low - margin or np.fmax.reduce(samples) > high + margin:
@@ -181,7 +186,12 @@ def _trigger_s(configuration: Configuration, times: Timeline, log: RepairLog) ->
     step_s = 1.0 / times.stretches[0].rate_hz
     if -step_s <= trigger_s <= max(ends) + step_s:
         return trigger_s
-    log.add(f"trigger {trigger_s:.6g} s after the start, outside the record", "CFG", "trigger unknown", SURE)
+    log.add(
+        f"trigger {trigger_s:.6g} s after the start, outside the record",
+        "CFG",
+        "passed over: no sample lies there",
+        SURE,
+    )
     return None
 
 
@@ -190,7 +200,12 @@ def _clock(configuration: Configuration, times: Timeline, log: RepairLog) -> Clo
     if configuration.start is None:
         doubts.append("no start time")
     doubts += _first_stamp_doubts(configuration, times, log)
-    return stated_clock(configuration.time_quality, configuration.leap_second, configuration.time_offset_s, doubts)
+    resolution_s = configuration.start.resolution_ns * 1e-9 if configuration.start else 0.0
+    stated = (configuration.time_quality, configuration.leap_second, configuration.time_offset_s)
+    clock = stated_clock(*stated, resolution_s, doubts)
+    if configuration.edition > 1991:
+        return clock
+    return replace(clock, notes=(*clock.notes, "dates of 1991 put the month first; some makers put the day first"))
 
 
 def _first_stamp_doubts(configuration: Configuration, times: Timeline, log: RepairLog) -> list[str]:

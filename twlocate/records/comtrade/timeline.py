@@ -193,7 +193,10 @@ def _unwrapped(stamps: NDArray[np.int64], log: RepairLog) -> NDArray[np.int64]:
         return stamps
     log.add(f"stamps wrap {counted(len(back), 'time')} at {wrap}", "DAT", "counted on", SURE)
     steps[back] += wrap
-    unwrapped: NDArray[np.int64] = np.cumsum(np.concatenate([stamps[:1], steps]))
+    first = int(stamps[0])
+    if wrap == 2**32 and first >= 2**31:
+        first -= wrap  # a stamp before zero, written as an unsigned word
+    unwrapped: NDArray[np.int64] = np.cumsum(np.concatenate([[first], steps]))
     return unwrapped
 
 
@@ -206,8 +209,10 @@ def _weighed(times_s: FloatArray, rates_hz: FloatArray, tick_s: float, first_s: 
     steps, steps_s = np.diff(times_s), 1.0 / rates_hz
     ratio = _stamp_ratio(steps, steps_s, tick_s)
     if not 0.5 < ratio < 2.0:
-        return _misscaled(times_s, rates_hz, ratio, first_s, log)
-    breaks = np.flatnonzero(np.abs(steps - steps_s[:-1]) > np.maximum(0.5 * steps_s[:-1], 2.5 * tick_s)) + 1
+        return _misscaled(times_s, rates_hz, ratio, tick_s, first_s, log)
+    # where the rate changes, the step may belong to either side
+    off = np.minimum(np.abs(steps - steps_s[:-1]), np.abs(steps - steps_s[1:]))
+    breaks = np.flatnonzero(off > np.maximum(0.5 * steps_s[:-1], 2.5 * tick_s)) + 1
     if len(breaks) > MAX_BREAKS * len(steps_s):
         log.add("stamps jump about", "DAT", "passed over: the sampling rate gives the time", GUESS)
         return Timeline(tuple(_rate_stretches(rates_hz, np.array([0]), np.zeros(1))), first_s, [CONTRADICTION])
@@ -231,15 +236,17 @@ def _stamp_ratio(steps: FloatArray, steps_s: FloatArray, tick_s: float) -> float
     return float(np.mean(ratios[near])) if near.any() else usual
 
 
-def _misscaled(times_s: FloatArray, rates_hz: FloatArray, ratio: float, first_s: float, log: RepairLog) -> Timeline:
+def _misscaled(
+    times_s: FloatArray, rates_hz: FloatArray, ratio: float, tick_s: float, first_s: float, log: RepairLog
+) -> Timeline:
     """Return the stretches where stamps and rate differ by more than a factor of two: another unit, or nonsense."""
     power = round(np.log10(ratio)) if ratio > 0.0 else 0
     if power and abs(ratio / 10.0**power - 1.0) < 1e-3:
         log.add(
             f"stamps count in a unit {10.0**-power:g} times that of the standard", "DAT", "rescaled to the rate", LIKELY
         )
-        tick_s = float(np.min(np.diff(times_s)[np.diff(times_s) > 0.0])) / 10.0**power
-        return _weighed(times_s / 10.0**power, rates_hz, tick_s * 1e-3, first_s, log)
+        unit = 10.0**power
+        return _weighed(times_s / unit, rates_hz, tick_s / unit, first_s / unit, log)
     log.add(f"stamps advance {ratio:.4g} times as fast as the rate", "DAT", "the sampling rate gives the time", GUESS)
     return Timeline(tuple(_rate_stretches(rates_hz, np.array([0]), np.zeros(1))), first_s, [CONTRADICTION])
 

@@ -94,7 +94,7 @@ def counts_of(channel: Channel, file_type: str, path: Path) -> Counts:
         raise RecordError(f"{path}: channel {channel.name!r} has infinite samples")
     limit = COUNT_LIMIT[file_type]
     if file_type == "FLOAT32":
-        options = [(1.0, 0.0)] if channel.step is None else [(channel.step, channel.offset), (1.0, 0.0)]
+        options = [(channel.step or 1.0, channel.offset), (1.0, 0.0)]
     else:
         largest = float(np.nanmax(np.abs(channel.samples), initial=0.0))
         options = [(largest / limit if largest > 0.0 else 1.0, 0.0)]
