@@ -191,7 +191,7 @@ def line_event(rng: np.random.Generator) -> Event:
                 resolution_ns=1,
                 trigger_s=8e-3,
                 line_frequency_hz=50.0,
-                clock=Clock(u_s=0.1e-6 / 3**0.5),
+                clock=Clock(u_s=0.1e-6 / 3**0.5, utc_offset_s=0),
             )
             write_comtrade(record, record.path, "BINARY32")
         write_towers(folder / "towers.csv")

@@ -3,6 +3,7 @@
 import json
 import subprocess
 import sys
+from pathlib import Path
 
 HEAVY = ["numpy", "scipy", "pywt", "matplotlib", "pydantic", "pint", "rich"]
 
@@ -27,3 +28,10 @@ def test_help_loads_no_numeric_library():
 def test_help_of_each_command_loads_no_numeric_library():
     for command in ("locate", "inspect"):
         assert not loaded_by(command, "--help") & set(HEAVY)
+
+
+def test_the_main_path_loads_only_what_it_needs():
+    case = Path(__file__).parents[1] / "recordings" / "line-fault" / "case.toml"
+    loaded = loaded_by("locate", str(case), "--json")
+    assert {"numpy", "pywt", "pydantic", "pint"} <= loaded
+    assert not loaded & {"scipy", "matplotlib", "rich"}
