@@ -1,9 +1,15 @@
 """The command line: ``twlocate COMMAND``; each command is one thin file in ``commands/``."""
 
+import os
+
 import click
 
 from twlocate.commands.inspect import inspect
 from twlocate.commands.locate import locate
+
+# The matrices here are small: more threads cost more than they save, and with one the last bits of a sum do not
+# depend on the machine, so that the same inputs give the same bytes.
+os.environ.setdefault("OPENBLAS_NUM_THREADS", "1")
 
 
 @click.group(context_settings={"help_option_names": ["-h", "--help"]})
