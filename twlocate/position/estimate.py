@@ -18,6 +18,9 @@ from twlocate.routes import Route
 COARSE_POINTS = 129
 """Grid points a section before it is refined."""
 
+FINEST_GRID = 1e-9
+"""Closest grid, as a share of the section, so that neighbouring points differ in their last digits."""
+
 FINE_STEPS = np.linspace(-8.0, 8.0, 129)
 """Where the grid is refined around each peak, in standard uncertainties."""
 
@@ -93,7 +96,10 @@ def estimate(
     ------
     NoPosition
         The readings do not single out a part of the route.
+    ValueError
+        A reading's time or uncertainty is not a finite number, or the uncertainty is not positive.
     """
+    _check(readings)
     explanations = explain(route, stations, readings)
     models = [
         [linear_model(route, section, stations, readings, explanation) for section in range(len(route.sections))]
@@ -123,6 +129,15 @@ def estimate(
     )
 
 
+def _check(readings: Sequence[Reading]) -> None:
+    for index, reading in enumerate(readings):
+        if not (np.isfinite(reading.time_s) and 0 < reading.u_s < np.inf):
+            raise ValueError(
+                f"reading {index}: {reading.time_s:g} s with the standard uncertainty {reading.u_s:g} s is no arrival "
+                "time; give a finite time and an uncertainty above 0"
+            )
+
+
 # ---------------------------------------------------------------- the grid and the density on it
 
 
@@ -138,7 +153,7 @@ def _grid(route: Route, section: int, models: Sequence[LinearModel]) -> FloatArr
     for model in models:
         if model.informative:
             peak, u = model.best_x(length)
-            points.append(peak + u * FINE_STEPS)
+            points.append(peak + max(u, FINEST_GRID * length) * FINE_STEPS)
     grid = np.unique(np.concatenate(points))
     return grid[(grid >= 0.0) & (grid <= length)]
 
@@ -188,11 +203,20 @@ def _alternatives(
 
 
 def _peak(densities: Sequence[SectionDensity], models: Sequence[LinearModel]) -> Point:
-    section = max(range(len(densities)), key=lambda index: densities[index].density.max())
-    x = float(densities[section].x[densities[section].density.argmax()])
-    weights = models[section].weights(np.array([x]))[0][0]
-    curvature = float(models[section].per_metre @ weights @ models[section].per_metre)
-    return Point(section, x, curvature**-0.5)
+    """Return the highest point of the density; where most of it lies on a plateau, the middle of that."""
+    likeliest = max(range(len(densities)), key=lambda index: densities[index].mass)
+    if _u_of_peak(densities[likeliest], models[likeliest]) is None:
+        return Point(likeliest, *densities[likeliest].moments())
+    peaks = {s: u for s, row in enumerate(densities) if (u := _u_of_peak(row, models[s])) is not None}
+    section = max(peaks, key=lambda index: densities[index].density.max())
+    return Point(section, densities[section].mode, peaks[section])
+
+
+def _u_of_peak(density: SectionDensity, model: LinearModel) -> float | None:
+    """Return the standard uncertainty of a section's peak, m; None where it would be wider than the section."""
+    curvature = model.pull(density.mode)[1]
+    length = float(density.x[-1])
+    return curvature**-0.5 if curvature * length**2 > 1 else None
 
 
 def _attribution(route: Route, stations: Sequence[Station], explanation: Explanation, section: int) -> str:
@@ -211,11 +235,7 @@ def _fits(
     point: Point,
 ) -> dict[int, Fit]:
     """Return path and residual of each attributed reading at the best place and event time."""
-    here = np.array([point.distance_m])
-    residual = model.residual(here)[0]
-    inverse = np.linalg.inv(model.covariance(here)[0])
-    flat = model.flat
-    left = residual - flat @ np.linalg.solve(flat.T @ inverse @ flat, flat.T @ inverse @ residual)
+    left = model.left_over(point.distance_m)
     return {
         index: Fit(path_of(cause, route, point.section, stations[readings[index].station].node).name, float(rest))
         for (index, cause), rest in zip(explanation.causes, left, strict=True)

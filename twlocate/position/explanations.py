@@ -10,7 +10,7 @@ from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 
 from twlocate.position.evidence import Reading, Station
-from twlocate.routes import Route, WavePath, direct_path, echo_path, node_echo_path, repeated_echo_path
+from twlocate.routes import Route, WavePath, direct_path, echo_path, node_echo_path, repeated_echo_path, transit_s
 
 CLOCK_WRONG = 1e-3
 """Prior probability that a clock is off by far more than it states (common practice, no source)."""
@@ -26,6 +26,10 @@ LATER_READINGS = 4
 
 EARLIER_READINGS = 3
 """How many readings a station may offer as its first front."""
+
+
+MIRROR_SIGMAS = 8.0
+"""A reading further than this from when a node's echo is due is not weighed as that echo: exp(−8²/2) is nothing."""
 
 
 @dataclass(frozen=True)
@@ -129,10 +133,15 @@ def _of_pulse(route: Route, station: Station, own: Sequence[int], readings: Sequ
     launch = (own[0], Cause("launch"))
     likeliest = sorted(own[1:], key=lambda index: readings[index].outlier)[:LATER_READINGS]
     later = sorted(likeliest)
-    mirrors = [node for node in route.nodes if node != station.node]
+    mirrors = {
+        index: [
+            node for node in route.nodes if _may_be_echo_of(node, route, station, readings[own[0]], readings[index])
+        ]
+        for index in later
+    }
     for echo in later:
         others = [index for index in later if index != echo]
-        options = [list(_other_causes(index, echo, mirrors, readings)) for index in others]
+        options = [list(_other_causes(index, echo, mirrors[index], len(route.nodes) - 1, readings)) for index in others]
         for picked in itertools.product(*options):
             prior = (1 - _outlier(readings[echo])) * math.prod(weight for _, _, weight in picked)
             causes = tuple((index, cause) for index, cause, _ in picked if cause is not None)
@@ -141,12 +150,21 @@ def _of_pulse(route: Route, station: Station, own: Sequence[int], readings: Sequ
     yield _Part((launch,), math.prod(_outlier(readings[index]) for index in later))
 
 
+def _may_be_echo_of(node: str, route: Route, station: Station, launch: Reading, reading: Reading) -> bool:
+    """Whether a reading comes about when the echo of a node is due, which does not depend on where the event is."""
+    if node == station.node:
+        return False
+    there, back = transit_s(route, station.node, node), transit_s(route, node, station.node)
+    u = ((there.u + back.u) ** 2 + launch.u_s**2 + reading.u_s**2) ** 0.5
+    return bool(abs(reading.time_s - launch.time_s - there.value - back.value) <= MIRROR_SIGMAS * u)
+
+
 def _other_causes(
-    index: int, echo: int, mirrors: Sequence[str], readings: Sequence[Reading]
+    index: int, echo: int, mirrors: Sequence[str], n_mirrors: int, readings: Sequence[Reading]
 ) -> Iterator[tuple[int, Cause | None, float]]:
     wrong = _outlier(readings[index])
     for mirror in mirrors:
-        yield index, Cause("node", mirror), (1 - wrong) * _PRIOR_OF_ECHO["node"] / len(mirrors)
+        yield index, Cause("node", mirror), (1 - wrong) * _PRIOR_OF_ECHO["node"] / n_mirrors
     if index > echo:
         yield index, Cause("repeat"), (1 - wrong) * _PRIOR_OF_ECHO["repeat"]
     yield index, None, wrong
