@@ -6,6 +6,7 @@ import time
 import numpy as np
 import pytest
 
+from twlocate.errors import NoPosition
 from twlocate.position import Reading, Station, estimate
 from twlocate.position.band import band_length
 from twlocate.quantity import Quantity
@@ -240,3 +241,40 @@ def test_coverage_of_a_pulse_echo_among_joints():
         )
         held += holds(estimate(route, [Station("S", None, launches=True)], readings), route, section, x)
     assert abs(held / n - 0.95) < binomial_margin(0.95, n)
+
+
+# ---------------------------------------------------------------- launches, clocks and echoes that are not the event's
+
+
+def test_pulses_from_both_ends_have_zeros_of_their_own():
+    """Each set times its echo against its own launch, so the two need not be launched together."""
+    route = line(Quantity(2e3), Quantity(170e6, 1e6))
+    stations = [Station("A", None, launches=True), Station("B", None, launches=True)]
+    readings = [
+        Reading(0, 5.0, 5e-9),
+        Reading(0, 5.0 + 2 * 600 / 170e6, 5e-9),
+        Reading(1, 0.0, 5e-9),
+        Reading(1, 2 * 1400 / 170e6, 5e-9),
+    ]
+    both = estimate(route, stations, readings)
+    one = estimate(route, stations[:1], readings[:2])
+    assert both.point.distance_m == pytest.approx(600.0, abs=1e-3)
+    assert both.point.u_m < one.point.u_m
+
+
+def test_a_wrong_clock_of_three_is_overruled_and_named():
+    """B's clock is 1 ms off and says 0.1 µs; A and C agree with a place on their line, and B's branch with none."""
+    route = tee()
+    readings = [Reading(i, run_s(route, direct_path(route, 0, n), 40e3), 3e-7) for i, n in enumerate("ABC")]
+    readings[1] = dataclasses.replace(readings[1], time_s=readings[1].time_s + 1e-3)
+    found = estimate(route, [Station(n, Quantity(0.0, 1e-7)) for n in "ABC"], readings)
+    assert found.alternatives[0].attribution.endswith("clock of B taken as wrong")
+    assert (found.point.section, found.point.distance_m) == (0, pytest.approx(40e3, abs=1.0))
+
+
+def test_the_far_end_alone_is_not_taken_for_the_event():
+    route = cable(2)
+    far = run_s(route, node_echo_path(route, "n0", "n2"))
+    readings = [Reading(0, 0.0, 5e-9), Reading(0, far, 5e-9, 0.02)]
+    with pytest.raises(NoPosition, match=r"may well be no echo of the event \(launched pulse, echo of n2\)"):
+        estimate(route, [Station("n0", None, launches=True)], readings)

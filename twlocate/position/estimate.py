@@ -113,7 +113,7 @@ def estimate(
     band = highest_density(densities, coverage)
     groups = _alternatives(route, stations, explanations, models, grids, shares, coverage)
     if band_length(band) > WIDEST_BAND * route.length_m or not groups:
-        raise NoPosition(_too_wide(coverage))
+        raise NoPosition(_only_nodes(stations, explanations, groups, coverage) or _too_wide(coverage))
     leading, alternative = groups[0]
     model = models[leading][alternative.point.section]
     names = [_reading_name(stations, readings, index) for index, _ in explanations[leading].causes]
@@ -265,6 +265,25 @@ def _too_little(stations: Sequence[Station], readings: Sequence[Reading]) -> str
             "give its clock an uncertainty, or another terminal"
         )
     return "one terminal's first arrival does not place the event; add a second terminal or a launched pulse"
+
+
+def _only_nodes(
+    stations: Sequence[Station],
+    explanations: Sequence[Explanation],
+    groups: Sequence[tuple[int, Alternative]],
+    coverage: float,
+) -> str:
+    """Return the words for a launched pulse whose echoes may well all be the nodes'; none where that is not so."""
+    if not any(station.launches for station in stations):
+        return ""
+    for index, alternative in groups:
+        event_seen = any(cause.kind in ("echo", "direct") for _, cause in explanations[index].causes)
+        if not event_seen and alternative.probability > 1 - coverage:
+            return (
+                f"what stands out behind the launched pulse may well be no echo of the event ({alternative.attribution}); "
+                "compare with a trace of a sound conductor, raise the gain, or launch from the other end"
+            )
+    return ""
 
 
 def _too_wide(coverage: float) -> str:

@@ -99,9 +99,9 @@ class _Part:
 
 
 def _clock_states(stations: Sequence[Station]) -> Iterator[tuple[frozenset[int], float]]:
-    """All clocks right, or one of the stated ones wrong."""
-    stated = [s for s, station in enumerate(stations) if station.clock is not None]
-    wrongable = stated if len(stations) > 1 else []
+    """All clocks right, or one of the stated ones wrong; a launch and its echoes need none."""
+    stated = [s for s, station in enumerate(stations) if station.clock is not None and not station.launches]
+    wrongable = stated if len(stated) > 1 else []
     yield frozenset(), 1.0 - CLOCK_WRONG * len(wrongable)
     for station in wrongable:
         yield frozenset({station}), CLOCK_WRONG
@@ -121,12 +121,15 @@ def _of_first_front(own: Sequence[int], readings: Sequence[Reading]) -> Iterator
     yield _Part((), earlier_wrong)
 
 
+ECHO_UNSEEN = 0.02
+"""Prior probability that the event gives no echo that stands out (common practice, no source)."""
+
 _PRIOR_OF_ECHO = {"node": 0.3, "repeat": 0.2}
 """Prior probability that a given later front is this kind of echo (common practice, no source)."""
 
 
 def _of_pulse(route: Route, station: Station, own: Sequence[int], readings: Sequence[Reading]) -> Iterator[_Part]:
-    """The first reading is the pulse; one of the later ones is the event's echo; the others have other causes."""
+    """The first reading is the pulse; one of the later ones, or none, is the event's echo; the others are not."""
     if not own:
         yield _Part((), 1.0)
         return
@@ -139,15 +142,15 @@ def _of_pulse(route: Route, station: Station, own: Sequence[int], readings: Sequ
         ]
         for index in later
     }
-    for echo in later:
+    for echo in (*later, None):
         others = [index for index in later if index != echo]
         options = [list(_other_causes(index, echo, mirrors[index], len(route.nodes) - 1, readings)) for index in others]
+        event = () if echo is None else ((echo, Cause("echo")),)
+        seen = ECHO_UNSEEN if echo is None else (1 - ECHO_UNSEEN) * (1 - _outlier(readings[echo])) / len(later)
         for picked in itertools.product(*options):
-            prior = (1 - _outlier(readings[echo])) * math.prod(weight for _, _, weight in picked)
             causes = tuple((index, cause) for index, cause, _ in picked if cause is not None)
             if _once_each(causes):
-                yield _Part((launch, (echo, Cause("echo")), *causes), prior / len(later))
-    yield _Part((launch,), math.prod(_outlier(readings[index]) for index in later))
+                yield _Part((launch, *event, *causes), seen * math.prod(weight for _, _, weight in picked))
 
 
 def _may_be_echo_of(node: str, route: Route, station: Station, launch: Reading, reading: Reading) -> bool:
@@ -160,12 +163,12 @@ def _may_be_echo_of(node: str, route: Route, station: Station, launch: Reading, 
 
 
 def _other_causes(
-    index: int, echo: int, mirrors: Sequence[str], n_mirrors: int, readings: Sequence[Reading]
+    index: int, echo: int | None, mirrors: Sequence[str], n_mirrors: int, readings: Sequence[Reading]
 ) -> Iterator[tuple[int, Cause | None, float]]:
     wrong = _outlier(readings[index])
     for mirror in mirrors:
         yield index, Cause("node", mirror), (1 - wrong) * _PRIOR_OF_ECHO["node"] / n_mirrors
-    if index > echo:
+    if echo is not None and index > echo:
         yield index, Cause("repeat"), (1 - wrong) * _PRIOR_OF_ECHO["repeat"]
     yield index, None, wrong
 

@@ -163,10 +163,11 @@ def _input_variances(route: Route, stations: Sequence[Station]) -> FloatArray:
 
 
 def _flat_columns(rows: Sequence[Reading], stations: Sequence[Station], explanation: Explanation) -> FloatArray:
-    """One column for the event time, one for each free or wrong clock; never a column that others add up to."""
-    free = {s for s, station in enumerate(stations) if station.clock is None} | explanation.wrong_clocks
+    """One column for the event time, one for each free or wrong clock and each launch; no reading has two of them."""
+    own_zero = {s for s, station in enumerate(stations) if station.clock is None or station.launches}
+    alone = own_zero | explanation.wrong_clocks
     used = {row.station for row in rows}
-    groups = [{station} for station in sorted(used & free)]
-    if used - free:
-        groups.append(used)
+    groups = [{station} for station in sorted(used & alone)]
+    if used - alone:
+        groups.append(used - alone)
     return np.array([[float(row.station in group) for group in groups] for row in rows]).reshape(len(rows), len(groups))
