@@ -114,6 +114,35 @@ def test_lists_all_faults_at_once(folder):
         ('channels = { v = "U" }', 'channels = { va = "U" }', "terminal 1, channels: va without vb, vc"),
         ('to = "B"', 'to = "A"', "section 2: J–A closes a loop"),
         ('from = "J"\nto = "B"', 'from = "K"\nto = "B"', "section: the sections do not join up"),
+        (
+            'speed = "0.57 c"',
+            'speed = "170 km/s"',
+            "section 2, speed: 170000 m/s is outside 2.99792e\\+07 to 2.99792e\\+08 m/s",
+        ),
+        ('speed = "0.57 c"', 'speed = "0.57 c ± 40 %"', "section 2, speed: .* may as well be 0; state it to a third"),
+        ('length = "8 km"', 'length = "8 km ± 8 km"', "section 2, length: 8000 m with .* of 8000 m may as well be 0"),
+        ('length = "8 km"', 'length = "8e9 km"', "section 2, length: 8e\\+12 m is longer than the equator"),
+        ('length = "8 km"', 'length = "1e400 km"', "section 2, length: '1e400 km' is not a finite number"),
+        (
+            'impedance = "385 ohm"',
+            'impedance = "1e300 ohm"',
+            "section 1, impedance: 1e\\+300 ohm is outside 0.1 to 100000",
+        ),
+        ('impedance = "385 ohm"', "impedance = 385", "section 1, impedance: not text; write it in quotes"),
+        (
+            'recording = "b.csv"',
+            'recording = "a.csv"',
+            "terminal 2, channels: v is 'U' of 'a.csv', which is v of terminal 1",
+        ),
+        ('recording = "b.csv"', 'recording = "b\\u0000.csv"', "terminal 2, recording: no file 'b.x00.csv'"),
+        ('recording = "b.csv"', f'recording = "{"b" * 5000}"', "terminal 2, recording: no file 'b{120}…'"),
+        ('channels = { v = "U" }', "channels = {}", "terminal 1, channels: empty; at least one entry is needed"),
+        (
+            'channels = { v = "U" }',
+            'channels = { v = "U", va = "1", vb = "2", vc = "3" }',
+            "terminal 1, channels: v beside va, vb, vc; give three phases or one v",
+        ),
+        ('from = "A"', 'from = ""', "section 1, from: empty; give it a name"),
         ("title", "titel", "titel: unknown key; did you mean 'title'\\?"),
     ],
 )
@@ -151,3 +180,46 @@ def test_pipe_needs_flow_below_the_wave_speed(folder):
     text = GOOD.replace('"line"', '"pipe"').replace('{ v = "U" }', '{ p = "U" }').replace('impedance = "385 ohm"\n', "")
     text = text.replace('speed = "0.57 c"', 'speed = "1000 m/s"\nflow_speed = "-1200 m/s"')
     assert "section 2, flow_speed: -1200 m/s is not below the wave speed" in faults(folder, text)
+
+
+def as_pipe(text):
+    text = text.replace('"line"', '"pipe"').replace('{ v = "U" }', '{ p = "U" }').replace('impedance = "385 ohm"\n', "")
+    return text.replace('speed = "294.6 m/µs ± 0.5 m/µs"', 'speed = "1148 m/s ± 9 m/s"')
+
+
+@pytest.mark.parametrize(
+    ("speeds", "words"),
+    [
+        ('speed = "294 m/µs"', "section 2, speed: 2.94e+08 m/s is outside 10 to 10000 m/s, what a pipe can have"),
+        (
+            'speed = "400 m/s ± 10 m/s"\nflow_speed = "375 m/s ± 1 m/s"',
+            "section 2, flow_speed: the wave speed against the flow: 25 m/s with a standard uncertainty of 10.0499 m/s",
+        ),
+    ],
+    ids=["unit of a line", "flow near the wave speed"],
+)
+def test_speeds_that_no_pipe_has(folder, speeds, words):
+    assert words in "\n".join(faults(folder, as_pipe(GOOD).replace('speed = "0.57 c"', speeds)))
+
+
+def test_terminals_may_share_a_file_with_channels_of_their_own(folder):
+    text = GOOD.replace('recording = "b.csv"\nchannels = { v = "U" }', 'recording = "a.csv"\nchannels = { v = "U2" }')
+    assert [terminal.channels["v"] for terminal in load(folder, text).terminals] == ["U", "U2"]
+
+
+def test_a_byte_order_mark_and_a_capital_are_no_faults(folder):
+    case = load(folder, "\ufeff" + GOOD.replace('"free"', '" Free "'))
+    assert case.terminals[1].clock_free
+
+
+def test_one_wrong_length_does_not_bury_itself_under_its_places(folder):
+    rows = [f"T{i},J-B,{9000 + i} m,," for i in range(300)]
+    (folder / "places.csv").write_text(PLACES + "\n".join(rows), encoding="utf-8")
+    found = faults(folder, GOOD + '\n[places]\nfile = "places.csv"\n')
+    assert found[-1] == "places, file: 295 more lines like these"
+    assert len(found) == 6
+
+
+def test_brackets_without_end(folder):
+    with pytest.raises(CaseError, match=r"case.toml: brackets are nested too deep"):
+        load(folder, "a = " + "[" * 5000 + "]" * 5000)

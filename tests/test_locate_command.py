@@ -167,7 +167,7 @@ def test_a_wrong_channel_name(event):
 
 def test_a_channel_of_the_wrong_kind(event):
     case = event("line-fault")
-    edit(case, 'va = "U L1"', 'va = "I L1"')
+    edit(case, 'va = "U L1", vb = "U L2", vc = "U L3", ia = "I L1", ib = "I L2", ic = "I L3"', 'v = "I L1"')
     in_one_line(run(case), 2, "channel 'I L1' is in 'A', which is no unit of voltage")
 
 

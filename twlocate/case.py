@@ -2,6 +2,7 @@
 
 import csv
 import difflib
+import math
 import tomllib
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
@@ -23,6 +24,26 @@ ROLES = {
 """What a channel can be, by kind of route: phase voltages and currents, one voltage or current; pressure, flow."""
 
 IMPEDANCE_UNIT = {"line": "ohm", "pipe": "Pa*s/m**3"}
+
+SPEEDS = {"line": (0.1 * SPEED_OF_LIGHT, SPEED_OF_LIGHT), "pipe": (10.0, 1e4)}
+"""m/s. A line at a tenth of the speed of light would need a relative permittivity of 100; bubbly water and soft hoses
+stay above 10 m/s; no pipe wave is faster than sound in steel, 5960 m/s. Meant to find slips of unit, so round."""
+
+IMPEDANCES = {"line": (0.1, 1e5), "pipe": (1.0, 1e13)}
+"""Ω, Pa·s/m³: as wide as any conductor or bore, gas or liquid (common practice, no source)."""
+
+LONGEST_M = 4.0075e7
+"""Circumference of the earth at the equator (WGS 84: 2π·6 378 137 m)."""
+
+LEAST_SIGMAS = 3.0
+"""Lengths, speeds and speeds against the flow are this many standard uncertainties or more above zero; below, a normal
+density would give much to values that cannot be."""
+
+LONGEST_NAME = 120
+"""Characters of a file name that a message shows."""
+
+FAULTS_SHOWN = 5
+"""Faults of a places file that are listed one by one."""
 
 
 @dataclass(frozen=True)
@@ -88,13 +109,17 @@ def _case_error(path: Path, faults: list[str]) -> CaseError:
 
 def _read_toml(path: Path) -> dict[str, Any]:
     try:
-        return tomllib.loads(path.read_text(encoding="utf-8"))
+        return tomllib.loads(path.read_text(encoding="utf-8-sig"))  # some editors put a byte order mark first
     except OSError as error:
         raise CaseError(f"{path}: {error.strerror or error}; give the path of a case file") from error
     except UnicodeDecodeError as error:
         raise CaseError(f"{path}: not UTF-8 text at byte {error.start}; a case file is a TOML text file") from error
     except tomllib.TOMLDecodeError as error:
         raise CaseError(f"{path}: not TOML: {error}") from error
+    except RecursionError as error:
+        raise CaseError(
+            f"{path}: brackets are nested too deep; a case file has tables in lists and no deeper"
+        ) from error
 
 
 # ---------------------------------------------------------------- the form: one field at a time
@@ -122,7 +147,9 @@ Duration = Annotated[Quantity, _quantity_in("s")]
 
 
 def _clock(text: object) -> object:
-    return text if text == "free" else _quantity_in("s").func(text)
+    if isinstance(text, str) and text.strip().lower() == "free":
+        return "free"
+    return _quantity_in("s").func(text)
 
 
 class _Form(BaseModel):
@@ -167,7 +194,18 @@ def _form_faults(error: ValidationError) -> Iterator[str]:
         elif fault["type"] == "missing":
             yield f"{place}: missing; every {_owner(fault['loc'])} needs it"
         else:
-            yield f"{place}: {fault['msg'].removeprefix('Value error, ')}"
+            yield f"{place}: {_WORDS.get(fault['type'], fault['msg'].removeprefix('Value error, '))}"
+
+
+_WORDS = {
+    "string_type": "not text; write it in quotes",
+    "string_too_short": "empty; give it a name",
+    "too_short": "empty; at least one entry is needed",
+    "list_type": "not a list of tables; write it with two brackets, like [[section]]",
+    "model_type": "not a table of keys and values",
+    "dict_type": 'not a table; write it like { v = "name of the channel" }',
+}
+"""What the usual types of fault are called here."""
 
 
 def _place(loc: tuple[int | str, ...]) -> str:
@@ -185,7 +223,7 @@ _FORMS: dict[str, type[_Form]] = {"section": _SectionForm, "terminal": _Terminal
 
 
 def _owner(loc: tuple[int | str, ...]) -> str:
-    return str(loc[0]) if len(loc) > 1 else "case"
+    return {"places": "places table"}.get(str(loc[0]), str(loc[0])) if len(loc) > 1 else "case file"
 
 
 def _suggestion(loc: tuple[int | str, ...]) -> str:
@@ -204,6 +242,7 @@ def _name_faults(tables: dict[str, Any], folder: Path) -> Iterator[str]:
     ends = [(table.get("from"), table.get("to")) for table in sections]
     nodes = {node for pair in ends for node in pair if isinstance(node, str)}
     yield from _shape_faults(ends)
+    yield from _shared_channels(_tables(tables, "terminal"))
     seen: set[object] = set()
     for index, table in enumerate(_tables(tables, "terminal"), 1):
         node = table.get("node")
@@ -217,6 +256,21 @@ def _name_faults(tables: dict[str, Any], folder: Path) -> Iterator[str]:
     places = tables.get("places")
     if isinstance(places, dict):
         yield from _file_faults(places.get("file"), folder, "places, file")
+
+
+def _shared_channels(terminals: list[dict[str, Any]]) -> Iterator[str]:
+    """One channel of one file cannot be two things; terminals may share a file, each with channels of its own."""
+    users: dict[tuple[object, object], str] = {}
+    for index, table in enumerate(terminals, 1):
+        recording, channels = table.get("recording"), table.get("channels")
+        named = channels.items() if isinstance(channels, dict) and isinstance(recording, str) else ()
+        for role, name in named:
+            if not isinstance(name, str):
+                continue
+            user = f"{role} of terminal {index}"
+            first = users.setdefault((recording, name), user)
+            if first != user:
+                yield f"terminal {index}, channels: {role} is {name!r} of {recording!r}, which is {first} already"
 
 
 def _tables(tables: dict[str, Any], key: str) -> list[dict[str, Any]]:
@@ -244,8 +298,19 @@ def _shape_faults(ends: list[tuple[object, object]]) -> Iterator[str]:
 
 
 def _file_faults(name: object, folder: Path, place: str) -> Iterator[str]:
-    if isinstance(name, str) and not (folder / name).is_file():
-        yield f"{place}: no file {name!r} beside the case file (looked in {folder.resolve()})"
+    if isinstance(name, str) and not _is_file(folder / name):
+        yield f"{place}: no file {_short(name)!r} beside the case file (looked in {folder.resolve()})"
+
+
+def _short(name: str) -> str:
+    return name if len(name) <= LONGEST_NAME else f"{name[:LONGEST_NAME]}…"
+
+
+def _is_file(path: Path) -> bool:
+    try:
+        return path.is_file()
+    except (OSError, ValueError):  # a name that no file can have: too long, or with a zero byte
+        return False
 
 
 def _role_faults(channels: object, kind: object, index: int) -> Iterator[str]:
@@ -257,6 +322,9 @@ def _role_faults(channels: object, kind: object, index: int) -> Iterator[str]:
             yield f"terminal {index}, channels: {role!r} is not a role on a {kind}; roles are {', '.join(roles)}"
     for phases in (("va", "vb", "vc"), ("ia", "ib", "ic")):
         given = [role for role in phases if role in channels]
+        single = phases[0][0]
+        if given and single in channels:
+            yield f"terminal {index}, channels: {single} beside {', '.join(given)}; give three phases or one {single}"
         if given and len(given) < len(phases):
             lacking = ", ".join(role for role in phases if role not in given)
             yield f"terminal {index}, channels: {', '.join(given)} without {lacking}; give all three phases, or v or i"
@@ -264,21 +332,59 @@ def _role_faults(channels: object, kind: object, index: int) -> Iterator[str]:
 
 def _value_faults(form: _CaseForm) -> Iterator[str]:
     for index, section in enumerate(form.section, 1):
-        if form.kind == "line" and section.speed.value > SPEED_OF_LIGHT:
-            yield f"section {index}, speed: {section.speed.value:g} m/s is above the speed of light; check the unit"
-        if form.kind == "line" and section.flow_speed != Quantity(0.0):
-            yield f"section {index}, flow_speed: only a pipe has a flow; leave it out on a line"
-        if abs(section.flow_speed.value) >= section.speed.value:
-            yield f"section {index}, flow_speed: {section.flow_speed.value:g} m/s is not below the wave speed"
+        for fault in (*_length_faults(section), *_speed_faults(section, form.kind), *_flow_faults(section, form.kind)):
+            yield f"section {index}, {fault}"
         if section.impedance is not None:
             yield from _impedance_faults(section.impedance, form.kind, index)
 
 
+def _length_faults(section: _SectionForm) -> Iterator[str]:
+    if section.length.value > LONGEST_M:
+        yield f"length: {section.length.value:g} m is longer than the equator; check the unit"
+    yield from _vague("length", section.length, "m")
+
+
+def _speed_faults(section: _SectionForm, kind: str) -> Iterator[str]:
+    low, high = SPEEDS[kind]
+    speed = section.speed
+    if kind == "line" and speed.value > SPEED_OF_LIGHT:
+        yield f"speed: {speed.value:g} m/s is above the speed of light; check the unit"
+    elif not low <= speed.value <= high:
+        yield f"speed: {speed.value:g} m/s is outside {low:g} to {high:g} m/s, what a {kind} can have; check the unit"
+    yield from _vague("speed", speed, "m/s")
+
+
+def _flow_faults(section: _SectionForm, kind: str) -> Iterator[str]:
+    flow, speed = section.flow_speed, section.speed
+    if kind == "line" and flow != Quantity(0.0):
+        yield "flow_speed: only a pipe has a flow; leave it out on a line"
+    if abs(flow.value) >= speed.value:
+        yield f"flow_speed: {flow.value:g} m/s is not below the wave speed"
+    elif flow != Quantity(0.0):
+        against = Quantity(speed.value - abs(flow.value), math.hypot(speed.u, flow.u))
+        yield from _vague("flow_speed: the wave speed against the flow", against, "m/s")
+
+
+def _vague(what: str, quantity: Quantity, unit: str) -> Iterator[str]:
+    if quantity.value < LEAST_SIGMAS * quantity.u:
+        yield (
+            f"{what}: {quantity.value:g} {unit} with a standard uncertainty of {quantity.u:g} {unit} may as well be 0; "
+            f"state it to a third or better"
+        )
+
+
 def _impedance_faults(text: str, kind: str, index: int) -> Iterator[str]:
+    low, high = IMPEDANCES[kind]
     try:
-        _positive(parse_quantity(text, IMPEDANCE_UNIT[kind]))
+        value = _positive(parse_quantity(text, IMPEDANCE_UNIT[kind])).value
     except ValueError as error:
         yield f"section {index}, impedance: {error}"
+        return
+    if not low <= value <= high:
+        yield (
+            f"section {index}, impedance: {value:g} {IMPEDANCE_UNIT[kind]} is outside {low:g} to {high:g}, "
+            f"what a {kind} can have; check the unit"
+        )
 
 
 # ---------------------------------------------------------------- from the form to the facts
@@ -322,7 +428,11 @@ def _read_places(path: Path, route: Route) -> tuple[tuple[Place, ...], list[str]
             places.append(_place_of(row, names, route))
         except ValueError as error:
             faults.append(f"places, file: {path.name} line {line}: {error}")
-    return tuple(places), faults
+    more = len(faults) - FAULTS_SHOWN
+    return tuple(places), [
+        *faults[:FAULTS_SHOWN],
+        *([f"places, file: {more} more lines like these"] if more > 0 else []),
+    ]
 
 
 def _plain(section_name: str) -> str:
