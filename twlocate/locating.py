@@ -80,9 +80,9 @@ def locate(case: Case, *, coverage: float = 0.95) -> Finding:
     """
     observations = tuple(observe(case, terminal) for terminal in case.terminals)
     zero_ns = min((o.record.start_ns for o in observations if o.record.start_ns is not None), default=None)
-    stations = [_station(observation) for observation in observations]
+    stations = [_station(observation, zero_ns) for observation in observations]
     readings = [r for index, observation in enumerate(observations) for r in _readings(index, observation, zero_ns)]
-    checks = [*_gates(observations), *_transit_checks(case, stations, readings)]
+    checks = [*_gates(observations, zero_ns), *_transit_checks(case, stations, readings)]
     found, reason = _estimate(case, stations, readings, checks, coverage)
     return Finding(
         case=case,
@@ -100,15 +100,19 @@ def locate(case: Case, *, coverage: float = 0.95) -> Finding:
 # ---------------------------------------------------------------- observations to evidence
 
 
-def _station(observation: Observation) -> Station:
+def _station(observation: Observation, zero_ns: int | None) -> Station:
     terminal = observation.terminal
-    return Station(terminal.node, _clock(observation), terminal.delay, terminal.launches is not None)
+    return Station(terminal.node, _clock(observation, zero_ns), terminal.delay, terminal.launches is not None)
 
 
-def _clock(observation: Observation) -> Quantity | None:
-    """By how much the terminal's clock is ahead: as the case file says, or else as the recording does."""
+def _clock(observation: Observation, zero_ns: int | None) -> Quantity | None:
+    """By how much the terminal's clock is ahead: as the case file says, or else as the recording does.
+
+    A recording without an absolute start has no clock to speak of beside one that has; where none has, a clock stated
+    in the case file means that they were started together.
+    """
     terminal, record = observation.terminal, observation.record
-    if terminal.clock_free:
+    if terminal.clock_free or (record.start_ns is None and zero_ns is not None):
         return None
     if terminal.clock is not None:
         return terminal.clock
@@ -151,21 +155,24 @@ def _echo_reading(index: int, echo: Arrival, launched: Arrival) -> Reading:
 # ---------------------------------------------------------------- checks
 
 
-def _gates(observations: Sequence[Observation]) -> list[Gate]:
+def _gates(observations: Sequence[Observation], zero_ns: int | None) -> list[Gate]:
     return [
         Gate(f"{observation.terminal.node}: {gate.name}", gate.passed, gate.detail, gate.fatal)
         for observation in observations
-        for gate in (*observation.gates, _clock_gate(observation))
+        for gate in (*observation.gates, _clock_gate(observation, zero_ns))
     ]
 
 
-def _clock_gate(observation: Observation) -> Gate:
-    clock = _clock(observation)
+def _clock_gate(observation: Observation, zero_ns: int | None) -> Gate:
+    clock = _clock(observation, zero_ns)
     if observation.terminal.launches:
         return Gate("clock", True, "not needed: pulse and echo are timed by the same clock")
-    if clock is None:
-        return Gate("clock", False, "free: neither the case file nor the recording states an uncertainty for it")
-    return Gate("clock", True, f"standard uncertainty {time_text(clock.u)}")
+    if clock is not None:
+        together = "" if zero_ns is not None else ", the recordings taken as started together: none states when"
+        return Gate("clock", True, f"standard uncertainty {time_text(clock.u)}{together}")
+    if observation.record.start_ns is None and zero_ns is not None:
+        return Gate("clock", False, "free: the recording does not state when it starts, as another one does")
+    return Gate("clock", False, "free: neither the case file nor the recording states an uncertainty for it")
 
 
 def _transit_checks(case: Case, stations: Sequence[Station], readings: Sequence[Reading]) -> list[Gate]:

@@ -1,5 +1,6 @@
 """From a terminal's recording to the arrivals in it: channels to waves, waves to picks."""
 
+import math
 from collections.abc import Iterable, Mapping
 from dataclasses import dataclass, replace
 
@@ -11,6 +12,8 @@ from twlocate.case import Case, Terminal
 from twlocate.errors import RecordError
 from twlocate.quantity import unit_scale
 from twlocate.records import Channel, Record, Stretch, read
+from twlocate.routes import Route, transit_s
+from twlocate.scales import time_text
 from twlocate.waves import AERIAL_MODES
 
 VARIABLES = {"v": ("voltage", "V"), "i": ("current", "A"), "p": ("pressure", "Pa"), "q": ("flow", "m**3/s")}
@@ -25,6 +28,9 @@ FRONTS_LISTENING, FRONTS_LAUNCHING = 6, 16
 
 FEWEST_SAMPLES = 64
 """Fewer samples than this hold no noise to measure a front against."""
+
+LARGEST_READING = 1e30
+"""No recorder reads more in SI units; a larger figure is a broken scale, and its square would overflow."""
 
 LEAST_LAUNCH = 0.2
 """A launched signal is at least this share of the highest front: an open or short end echoes no more than all of it."""
@@ -71,6 +77,8 @@ class _Signals:
     rate_hz: float
     start_s: float
     line_frequency_hz: float | None
+    after_gap: bool
+    """Whether samples of the recording precede this run, with some missing in between."""
 
 
 def observe(case: Case, terminal: Terminal) -> Observation:
@@ -84,7 +92,7 @@ def observe(case: Case, terminal: Terminal) -> Observation:
     record = read(terminal.recording)
     channels = {role: record.channel(name) for role, name in terminal.channels.items()}
     signals = _signals(record, channels)
-    waves = _waves(signals, _impedance_at(case, terminal.node))
+    waves = _waves(signals, _impedance_at(case, terminal.node) if _on_one_side(channels) else None)
     most = FRONTS_LAUNCHING if terminal.launches else FRONTS_LISTENING
     candidates = [(wave, pick(_trace(signals, wave), most=most)) for wave in waves]
     wave, picks = max(candidates, key=lambda candidate: _strength(candidate[1]))
@@ -92,7 +100,8 @@ def observe(case: Case, terminal: Terminal) -> Observation:
         picks = from_the_launch(picks)
     if terminal.launches == "pulse":
         picks = without_trailing_edges(picks)
-    return Observation(terminal, record, wave, picks, (*picks.gates, _clipping(signals, wave, picks)))
+    gates = (*picks.gates, _clipping(signals, wave, picks), _gap(case.route, terminal.node, signals, picks))
+    return Observation(terminal, record, wave, picks, gates)
 
 
 def _strength(picks: Picks) -> float:
@@ -111,18 +120,32 @@ def _signals(record: Record, channels: Mapping[str, Channel]) -> _Signals:
         role: _aligned(_in_si(record, channel, role)[stretch.first : stretch.stop], channel, skew_s, stretch.rate_hz)
         for role, channel in channels.items()
     }
+    aligned_from = math.ceil((max(channel.skew_s for channel in channels.values()) - skew_s) * stretch.rate_hz)
     first, stop = _longest_complete_run(np.array(list(rows.values())))
     if stop - first < FEWEST_SAMPLES:
         raise RecordError(
             f"{record.path}: {stop - first} unbroken samples in the channels named; {FEWEST_SAMPLES} or more are needed"
         )
+    by_role = {role: row[first:stop] for role, row in rows.items()}
+    _check_size(record, channels, by_role)
     return _Signals(
-        by_role={role: row[first:stop] for role, row in rows.items()},
+        by_role=by_role,
         steps={role: (channel.step or 0.0) * _si_scale(record, channel, role) for role, channel in channels.items()},
         rate_hz=stretch.rate_hz,
         start_s=stretch.start_s + first / stretch.rate_hz + skew_s,
         line_frequency_hz=record.line_frequency_hz,
+        after_gap=first > aligned_from or stretch is not record.stretches[0],
     )
+
+
+def _check_size(record: Record, channels: Mapping[str, Channel], by_role: Mapping[str, FloatArray]) -> None:
+    for role, row in by_role.items():
+        largest = float(np.abs(row).max())
+        if largest > LARGEST_READING:
+            raise RecordError(
+                f"{record.path}: channel {channels[role].name!r} reads up to {largest:.3g} {VARIABLES[role[0]][1]}; "
+                f"no recorder reads more than {LARGEST_READING:g}: check its unit and scale"
+            )
 
 
 def _stretch_of_event(record: Record) -> Stretch:
@@ -135,9 +158,11 @@ def _stretch_of_event(record: Record) -> Stretch:
 
 
 def _si_scale(record: Record, channel: Channel, role: str) -> float:
+    """Return the factor from a channel's readings to SI on the primary side."""
     name, unit = VARIABLES[role[0]]
+    to_primary = channel.ratio if channel.side == "secondary" and channel.ratio else 1.0
     try:
-        return unit_scale(channel.unit, unit)
+        return unit_scale(channel.unit, unit) * to_primary
     except ValueError as error:
         raise RecordError(
             f"{record.path}: channel {channel.name!r} is in {channel.unit!r}, which is no unit of {name} "
@@ -155,7 +180,8 @@ def _aligned(samples: FloatArray, channel: Channel, skew_s: float, rate_hz: floa
     if late == 0:
         return samples
     index = np.arange(samples.size, dtype=np.float64)
-    return np.interp(index, index + late, samples)
+    # what the channel had not yet sampled at an instant is missing, not equal to its first reading
+    return np.interp(index, index + late, samples, left=np.nan)
 
 
 def _longest_complete_run(rows: FloatArray) -> tuple[int, int]:
@@ -176,6 +202,14 @@ def _impedance_at(case: Case, node: str) -> float | None:
     """Impedance of the section that ends at a terminal; None at a tee, where there is no single one."""
     links = case.route.neighbours[node]
     return case.route.sections[links[0][0]].impedance if len(links) == 1 else None
+
+
+def _on_one_side(channels: Mapping[str, Channel]) -> bool:
+    """Whether every reading can be had on the primary side, where the impedance holds.
+
+    Secondary values with a ratio of 1:1 are those of a recorder that was not told the ratio.
+    """
+    return all(channel.side != "secondary" or channel.ratio not in (None, 1.0) for channel in channels.values())
 
 
 def _waves(signals: _Signals, impedance: float | None) -> list[Wave]:
@@ -304,3 +338,20 @@ def _flat_at_limit(samples: FloatArray, window: slice) -> bool:
         if (runs >= FLAT_TOP).any():
             return True
     return False
+
+
+# ---------------------------------------------------------------- gaps
+
+
+def _gap(route: Route, node: str, signals: _Signals, picks: Picks) -> Gate:
+    """Whether the first front can have been lost: its echo would then come first, a round trip later at most."""
+    name = "no samples are missing just before the front"
+    if not (signals.after_gap and picks.arrivals):
+        return Gate(name, True, "the front is in an unbroken run" if picks.arrivals else "there is no front")
+    lead_s = picks.arrivals[0].time_s - signals.start_s
+    round_trip_s = max(transit_s(route, node, far).value + transit_s(route, far, node).value for far in route.nodes)
+    detail = (
+        f"the unbroken run begins {time_text(lead_s)} before the front; an echo takes up to {time_text(round_trip_s)}"
+    )
+    way_out = "" if lead_s > round_trip_s else ", so the front itself may be among them: use a record without this gap"
+    return Gate(name, lead_s > round_trip_s, detail + way_out, fatal=True)
