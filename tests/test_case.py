@@ -142,6 +142,11 @@ def test_lists_all_faults_at_once(folder):
             'channels = { v = "U", va = "1", vb = "2", vc = "3" }',
             "terminal 1, channels: v beside va, vb, vc; give three phases or one v",
         ),
+        (
+            'from = "A"',
+            'from = "A\\u001b[2J"',
+            r"section 1, from: 'A.x1b\[2J' holds a character that cannot be printed",
+        ),
         ('from = "A"', 'from = ""', "section 1, from: empty; give it a name"),
         ("title", "titel", "titel: unknown key; did you mean 'title'\\?"),
     ],
@@ -156,6 +161,10 @@ def test_says_where_and_what(folder, old, new, words):
         ("T3,A-Q,1 km,,", "line 4: no section 'A-Q'; sections are A-J, J-B"),
         ("T3,A-J,99 km,,", "line 4: chainage 99 km is not on the section, which is 62310 m long"),
         ("T3,A-J,,,", "line 4: no chainage"),
+        ("T3,A-J,1 km,nan,2", "line 4: lat nan is not within ±90 degrees"),
+        ("T3,A-J,1 km,54,181", "line 4: lon 181 is not within ±180 degrees"),
+        ("T\x1b[31m,A-J,1 km,,", "line 4: 'T\\x1b[31m' holds a character that cannot be printed"),
+        ("T" * 200_000 + ",A-J,1 km,,", "places.csv is no comma-separated table: field larger than field limit"),
         ("T3,A-J,1 km,north,2", "line 4: could not convert string to float: 'north'"),
     ],
 )
@@ -223,3 +232,15 @@ def test_one_wrong_length_does_not_bury_itself_under_its_places(folder):
 def test_brackets_without_end(folder):
     with pytest.raises(CaseError, match=r"case.toml: brackets are nested too deep"):
         load(folder, "a = " + "[" * 5000 + "]" * 5000)
+
+
+@pytest.mark.parametrize("text", ["", "T1;A-J;340 m\n", "station,km\nT1,3\n"], ids=["empty", "semicolons", "others"])
+def test_a_places_file_without_its_columns(folder, text):
+    (folder / "places.csv").write_text(text, encoding="utf-8")
+    (fault,) = faults(folder, GOOD + '\n[places]\nfile = "places.csv"\n')
+    assert fault.startswith("places, file: places.csv has no column name, section, chainage in its first line")
+
+
+def test_titles_of_the_places_file_may_have_capitals_and_blanks(folder):
+    (folder / "places.csv").write_text("Name, Section, Chainage\nT1, A-J, 340 m\n", encoding="utf-8")
+    assert load(folder, GOOD + '\n[places]\nfile = "places.csv"\n').places[0].name == "T1"

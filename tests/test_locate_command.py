@@ -241,3 +241,13 @@ def test_an_option_out_of_range():
     result = run(RECORDINGS / "line-fault" / "case.toml", "--coverage", "1.2")
     assert result.exit_code == 2
     assert "0.5<=x<=0.999" in result.stderr
+
+
+@pytest.mark.parametrize("name", ["[/b]", "[bold red]x[/]", "a/b"])
+def test_names_are_printed_as_they_are(event, tmp_path, name):
+    case = event("line-fault")
+    edit(case, '"Marsh End"', f'"{name}"')
+    edit(case, '[places]\nfile = "towers.csv"\n', "")
+    result = run(case, "--out", tmp_path / "finding")
+    assert result.exit_code == 0, result.output
+    assert f"Arrivals at {name} in" in (tmp_path / "finding" / "finding.txt").read_text(encoding="utf-8")

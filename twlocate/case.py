@@ -42,6 +42,8 @@ density would give much to values that cannot be."""
 LONGEST_NAME = 120
 """Characters of a file name that a message shows."""
 
+PLACE_COLUMNS = "the columns are name, section, chainage and, if known, lat, lon, with commas between"
+
 FAULTS_SHOWN = 5
 """Faults of a places file that are listed one by one."""
 
@@ -156,9 +158,18 @@ class _Form(BaseModel):
     model_config = ConfigDict(extra="forbid", frozen=True, arbitrary_types_allowed=True)
 
 
+def _printable(text: str) -> str:
+    if not text.isprintable():
+        raise ValueError(f"{text!r} holds a character that cannot be printed; leave it out")
+    return text
+
+
+Name = Annotated[str, Field(min_length=1), AfterValidator(_printable)]
+
+
 class _SectionForm(_Form):
-    from_node: str = Field(alias="from", min_length=1)
-    to_node: str = Field(alias="to", min_length=1)
+    from_node: Name = Field(alias="from")
+    to_node: Name = Field(alias="to")
     length: Length
     speed: Speed
     impedance: str | None = None
@@ -179,7 +190,7 @@ class _PlacesForm(_Form):
 
 
 class _CaseForm(_Form):
-    title: str = ""
+    title: Annotated[str, AfterValidator(_printable)] = ""
     kind: Literal["line", "pipe"]
     section: list[_SectionForm] = Field(min_length=1)
     terminal: list[_TerminalForm] = Field(min_length=1)
@@ -420,10 +431,17 @@ def _read_places(path: Path, route: Route) -> tuple[tuple[Place, ...], list[str]
     faults: list[str] = []
     names = {_plain(section.name): index for index, section in enumerate(route.sections)}
     try:
-        rows = list(csv.DictReader(path.read_text(encoding="utf-8-sig").splitlines()))
+        rows = csv.DictReader(path.read_text(encoding="utf-8-sig").splitlines(), skipinitialspace=True)
+        rows.fieldnames = [name.strip().lower() for name in rows.fieldnames or ()]
+        listed = list(rows)
     except UnicodeDecodeError as error:
         return (), [f"places, file: {path.name} is not UTF-8 text at byte {error.start}; save it as UTF-8"]
-    for line, row in enumerate(rows, 2):
+    except csv.Error as error:
+        return (), [f"places, file: {path.name} is no comma-separated table: {error}"]
+    lacking = [key for key in ("name", "section", "chainage") if key not in rows.fieldnames]
+    if lacking:
+        return (), [f"places, file: {path.name} has no column {', '.join(lacking)} in its first line; {PLACE_COLUMNS}"]
+    for line, row in enumerate(listed, 2):
         try:
             places.append(_place_of(row, names, route))
         except ValueError as error:
@@ -442,7 +460,7 @@ def _plain(section_name: str) -> str:
 def _place_of(row: dict[str, str | None], sections: dict[str, int], route: Route) -> Place:
     lacking = [key for key in ("name", "section", "chainage") if not row.get(key)]
     if lacking:
-        raise ValueError(f"no {', '.join(lacking)}; the columns are name, section, chainage and, if known, lat, lon")
+        raise ValueError(f"no {', '.join(lacking)}; {PLACE_COLUMNS}")
     section = sections.get(_plain(row["section"] or ""))
     if section is None:
         raise ValueError(f"no section {row['section']!r}; sections are {', '.join(sections)}")
@@ -450,5 +468,14 @@ def _place_of(row: dict[str, str | None], sections: dict[str, int], route: Route
     length = route.sections[section].length.value
     if not 0 <= distance <= length:
         raise ValueError(f"chainage {row['chainage']} is not on the section, which is {length:g} m long")
-    lat, lon = (float(text) if (text := row.get(key)) else None for key in ("lat", "lon"))
-    return Place(row["name"] or "", section, distance, lat, lon)
+    lat, lon = (_degrees(row.get(key), key, limit) for key, limit in (("lat", 90.0), ("lon", 180.0)))
+    return Place(_printable(row["name"] or ""), section, distance, lat, lon)
+
+
+def _degrees(text: str | None, key: str, limit: float) -> float | None:
+    if not text:
+        return None
+    angle = float(text)
+    if not -limit <= angle <= limit:
+        raise ValueError(f"{key} {text} is not within ±{limit:g} degrees")
+    return angle

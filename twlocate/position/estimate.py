@@ -280,8 +280,9 @@ def _only_nodes(
         event_seen = any(cause.kind in ("echo", "direct") for _, cause in explanations[index].causes)
         if not event_seen and alternative.probability > 1 - coverage:
             return (
-                f"what stands out behind the launched pulse may well be no echo of the event ({alternative.attribution}); "
-                "compare with a trace of a sound conductor, raise the gain, or launch from the other end"
+                "what stands out behind the launched pulse may well be no echo of the event "
+                f"({alternative.attribution}); compare with a trace of a sound conductor, raise the gain, or launch "
+                "from the other end"
             )
     return ""
 

@@ -23,12 +23,12 @@ SMALL_PROBABILITY = 0.005
 
 def print_finding(finding: Finding) -> None:
     """Print the finding to stdout, as wide as the terminal."""
-    Console().print(finding_text(finding))
+    Console(markup=False).print(finding_text(finding))
 
 
 def plain_text(finding: Finding) -> str:
     """Return the finding as text without colours, :data:`FILE_WIDTH` characters wide."""
-    console = Console(width=FILE_WIDTH, file=io.StringIO(), color_system=None)
+    console = Console(width=FILE_WIDTH, file=io.StringIO(), color_system=None, markup=False)
     with console.capture() as captured:
         console.print(finding_text(finding))
     return "\n".join(line.rstrip() for line in captured.get().splitlines()) + "\n"
