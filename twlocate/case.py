@@ -22,6 +22,9 @@ ROLES = {
 }
 """What a channel can be, by kind of route: phase voltages and currents, one voltage or current; pressure, flow."""
 
+REFLECTS = {"low impedance": -1, None: 0, "high impedance": 1}
+"""Sign of the reflection of voltage or pressure at a terminal, by what its bus is against the line or pipe."""
+
 IMPEDANCE_UNIT = {"line": "ohm", "pipe": "Pa*s/m**3"}
 
 
@@ -38,6 +41,8 @@ class Terminal:
     clock_free: bool
     delay: Quantity
     """Transducer and secondary cabling, s."""
+    reflects: int
+    """Sign of what its bus makes of an arriving voltage or pressure wave: −1, +1, or 0 where that is not stated."""
     launches: str | None
     """``pulse`` or ``step`` where the terminal sends its own signal into the route; None where it only listens."""
 
@@ -144,6 +149,7 @@ class _TerminalForm(_Form):
     channels: dict[str, str] = Field(min_length=1)
     clock: Annotated[Quantity | Literal["free"] | None, BeforeValidator(_clock)] = None
     delay: Duration = Quantity(0.0)
+    bus: Literal["low impedance", "high impedance"] | None = None
     launches: Literal["pulse", "step"] | None = None
 
 
@@ -305,6 +311,7 @@ def _terminal(table: _TerminalForm, folder: Path) -> Terminal:
         clock=table.clock if isinstance(table.clock, Quantity) else None,
         clock_free=free,
         delay=table.delay,
+        reflects=REFLECTS[table.bus],
         launches=table.launches,
     )
 

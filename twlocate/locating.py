@@ -102,7 +102,13 @@ def locate(case: Case, *, coverage: float = 0.95) -> Finding:
 
 def _station(observation: Observation) -> Station:
     terminal = observation.terminal
-    return Station(terminal.node, _clock(observation), terminal.delay, terminal.launches is not None)
+    return Station(
+        terminal.node,
+        _clock(observation),
+        terminal.delay,
+        reflects=terminal.reflects,
+        launches=terminal.launches is not None,
+    )
 
 
 def _clock(observation: Observation) -> Quantity | None:
@@ -128,7 +134,7 @@ def _readings(index: int, observation: Observation, zero_ns: int | None) -> list
 
 
 def _reading(index: int, offset_s: float, arrival: Arrival) -> Reading:
-    return Reading(index, offset_s + arrival.time_s, arrival.u_s, arrival.outlier)
+    return Reading(index, offset_s + arrival.time_s, arrival.u_s, arrival.outlier, arrival.polarity)
 
 
 def _echo_reading(index: int, echo: Arrival, launched: Arrival) -> Reading:
@@ -155,8 +161,14 @@ def _gates(observations: Sequence[Observation]) -> list[Gate]:
     return [
         Gate(f"{observation.terminal.node}: {gate.name}", gate.passed, gate.detail, gate.fatal)
         for observation in observations
-        for gate in (*observation.gates, _clock_gate(observation))
+        for gate in (_front_gate(observation), *observation.gates, _clock_gate(observation))
     ]
+
+
+def _front_gate(observation: Observation) -> Gate:
+    arrivals = observation.picks.arrivals
+    detail = f"{len(arrivals)}, the first {arrivals[0].snr_db:.0f} dB above it" if arrivals else "none does"
+    return Gate("a front stands out of the noise", bool(arrivals), detail)
 
 
 def _clock_gate(observation: Observation) -> Gate:
