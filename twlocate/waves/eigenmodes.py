@@ -3,9 +3,9 @@
 from dataclasses import dataclass
 
 import numpy as np
-from numpy.typing import ArrayLike, NDArray
+from numpy.typing import ArrayLike
 
-ComplexArray = NDArray[np.complex128]
+from twlocate.arrays import ComplexArray
 
 
 @dataclass(frozen=True)

@@ -1,9 +1,9 @@
 """What happens to waves where branches meet."""
 
 import numpy as np
-from numpy.typing import ArrayLike, NDArray
+from numpy.typing import ArrayLike
 
-ComplexArray = NDArray[np.complex128]
+from twlocate.arrays import ComplexArray
 
 
 def reflection(impedance: ArrayLike, load: ArrayLike) -> ComplexArray:

@@ -3,9 +3,9 @@
 from collections.abc import Callable
 
 import numpy as np
-from numpy.typing import ArrayLike, NDArray
+from numpy.typing import ArrayLike
 
-from twlocate.arrays import FloatArray
+from twlocate.arrays import ComplexArray, FloatArray
 
 
 def split(across: ArrayLike, through: ArrayLike, impedance: float) -> tuple[FloatArray, FloatArray]:
@@ -45,7 +45,7 @@ def split_dispersive(
     across: ArrayLike,
     through: ArrayLike,
     rate_hz: float,
-    impedance: Callable[[NDArray[np.complex128]], NDArray[np.complex128]],
+    impedance: Callable[[ComplexArray], ComplexArray],
 ) -> tuple[FloatArray, FloatArray]:
     """Split as :func:`split` does, with an impedance that depends on frequency.
 

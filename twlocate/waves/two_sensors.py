@@ -8,11 +8,9 @@ zero frequency: there both sensors say the same thing.
 from dataclasses import dataclass
 
 import numpy as np
-from numpy.typing import ArrayLike, NDArray
+from numpy.typing import ArrayLike
 
-from twlocate.arrays import FloatArray, as_signal
-
-ComplexArray = NDArray[np.complex128]
+from twlocate.arrays import ComplexArray, FloatArray, as_signal
 
 SHARE_OF_HALF_WAVE = (0.1, 0.9)
 """ISO 10534-2:2001, 4.2: d > 0.05·λ and d < 0.45·λ, as a share of the half wave λ/2."""
