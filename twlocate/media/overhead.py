@@ -27,7 +27,7 @@ class Conductor:
     """Ω/m at direct current."""
     sag_m: float = 0.0
     gmr_m: float | None = None
-    """Geometric mean radius: given, resistance and inner inductance are constant (power frequency); None: skin effect."""
+    """Geometric mean radius: given, resistance and inside inductance are constant; None: skin effect."""
     bundle: int = 1
     bundle_spacing_m: float = 0.0
     """Between neighbours."""
@@ -123,8 +123,11 @@ def modal_speeds(modes: Modes, frequencies_hz: ArrayLike) -> FloatArray:
 def _internal(conductor: Conductor, s: ComplexArray) -> ComplexArray:
     if conductor.gmr_m is not None:
         inside = MU_0 / (2 * np.pi) * np.log(conductor.radius_m / conductor.gmr_m)
-        return (conductor.resistance + s * inside) / conductor.bundle
-    return skin_impedance(s, conductor.radius_m, conductor.resistance) / conductor.bundle
+        own = conductor.resistance + s * inside
+    else:
+        own = skin_impedance(s, conductor.radius_m, conductor.resistance)
+    shared: ComplexArray = own / conductor.bundle
+    return shared
 
 
 def skin_impedance(s: ComplexArray, radius_m: float, resistance: float) -> ComplexArray:
