@@ -31,6 +31,22 @@ def uniform_line(resistance: float, inductance: float, capacitance: float, condu
     return Medium(modes)
 
 
+def constant_line(speeds: FloatArray, impedances: FloatArray) -> Medium:
+    """Return a loss-free section of one mode, or of three phases with (ground, aerial, aerial) modes.
+
+    Parameters
+    ----------
+    speeds, impedances : ndarray, shape (n,)
+        m/s, and Ω or Pa·s/m³, of each mode; n is 1 or 3.
+    """
+    transform = np.eye(1) if len(speeds) == 1 else np.asarray(np.linalg.inv(CLARKE), dtype=np.float64)
+
+    def modes(s: ComplexArray) -> tuple[ComplexArray, ComplexArray]:
+        return s[:, None] / speeds, np.broadcast_to(impedances.astype(np.complex128), (s.size, len(speeds)))
+
+    return Medium(modes, transform)
+
+
 def pipe(density: float, speed: float, bore: float, *, resistance: float = 0.0, viscosity: float = 0.0) -> Medium:
     """Return a pipe of liquid.
 

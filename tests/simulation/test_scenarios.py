@@ -1,0 +1,199 @@
+"""``twlocate simulate`` from the scenario file to recordings that can be read and located."""
+
+import json
+import re
+
+import numpy as np
+import pytest
+from click.testing import CliRunner
+
+from twlocate.__main__ import main
+from twlocate.case import load_case
+from twlocate.errors import CaseError
+from twlocate.records import read
+from twlocate.simulation.scenario import load_scenario
+
+ROLES = '{ va = "U L1", vb = "U L2", vc = "U L3", ia = "I L1", ib = "I L2", ic = "I L3" }'
+
+LINE = f"""
+title = "Alder Bank – Thorn Cross (invented)"
+kind = "line"
+
+[[section]]
+from = "Alder Bank"
+to = "Thorn Cross"
+length = "96.3 km ± 50 m"
+speed = "294.9 m/us ± 0.5 m/us"
+impedance = "385 ohm"
+ground_speed = "272 m/us"
+ground_impedance = "640 ohm"
+
+[[terminal]]
+node = "Alder Bank"
+recording = "alder-bank.cfg"
+channels = {ROLES}
+clock = "± 0.1 us"
+delay = "0.8 us ± 0.05 us"
+
+[[terminal]]
+node = "Thorn Cross"
+recording = "thorn-cross.cfg"
+channels = {ROLES}
+clock = "± 0.1 us"
+delay = "0.8 us ± 0.05 us"
+
+[[end]]
+node = "Alder Bank"
+impedance = "120 ohm"
+
+[[end]]
+node = "Thorn Cross"
+impedance = "190 ohm"
+
+[event]
+kind = "fault"
+section = "Alder Bank-Thorn Cross"
+distance = "31.4 km"
+onset = "4 ms"
+type = "bg"
+resistance = "10 ohm"
+voltage = "180 kV"
+angle = "-20 degree"
+
+[recorder]
+rate = "1.25 MHz"
+duration = "8 ms"
+across_noise = 40.0
+through_noise = 0.5
+across_step = 12.2
+through_step = 0.3
+"""
+
+MAIN = """
+title = "Lark Hill main (invented)"
+kind = "pipe"
+
+[[section]]
+from = "Works"
+to = "Tank"
+length = "4.2 km ± 4 m"
+speed = "1150 m/s ± 8 m/s"
+impedance = "4.1e6 Pa*s/m^3"
+
+[[terminal]]
+node = "Works"
+recording = "works.csv"
+channels = { p = "pressure", q = "flow" }
+clock = "± 1 ms"
+
+[[terminal]]
+node = "Tank"
+recording = "tank.csv"
+channels = { p = "pressure" }
+clock = "± 1 ms"
+
+[[end]]
+node = "Tank"
+impedance = "8e6 Pa*s/m^3"
+
+[event]
+kind = "burst"
+section = "Works–Tank"
+distance = "1.6 km"
+onset = "10 s"
+outflow = "0.02 m^3/s"
+opening = "30 ms"
+pressure = "600 kPa"
+
+[recorder]
+rate = "250 Hz"
+duration = "30 s"
+across_noise = 100.0
+"""
+
+
+def simulated(tmp_path, text, *, seed=0, name="out"):
+    scenario = tmp_path / "scenario.toml"
+    scenario.write_text(text, encoding="utf-8")
+    arguments = ["simulate", str(scenario), "--out", str(tmp_path / name), "--seed", str(seed)]
+    return CliRunner().invoke(main, arguments), tmp_path / name
+
+
+@pytest.mark.parametrize("seed", range(3))
+@pytest.mark.parametrize(("text", "limit_m"), [(LINE, 200.0), (MAIN, 40.0)], ids=["fault", "burst"])
+def test_located_where_it_happened(tmp_path, text, limit_m, seed):
+    result, folder = simulated(tmp_path, text, seed=seed)
+    assert result.exit_code == 0
+    found = json.loads(CliRunner().invoke(main, ["locate", str(folder / "case.toml"), "--json"]).stdout)
+    truth = json.loads((folder / "truth.json").read_text(encoding="utf-8"))
+    assert abs(found["position"]["distance_m"] - truth["distance_m"]) < limit_m
+
+
+def test_burst_of_the_height_joukowsky_gives(tmp_path):
+    # half of the outflow is fed from either side: Δp = Z·Q/2 on an endless pipe, doubled at the closed end
+    _, folder = simulated(tmp_path, MAIN)
+    record = read(folder / "works.csv")
+    pressure = record.channels[0].samples
+    assert pressure[:2000].mean() == pytest.approx(600e3, abs=20)  # 1e-4 of the 160 kPa it ends up lower
+    after = pressure[int(11.7 * 250) : int(12.3 * 250)]  # past the front at 11.4 s, ahead of its echo by the break
+    assert 600e3 - after.mean() == pytest.approx(4.1e6 * 0.02, rel=0.005)
+
+
+def test_line_recordings_hold_the_steady_state_and_the_step(tmp_path):
+    _, folder = simulated(tmp_path, LINE)
+    record = read(folder / "alder-bank.cfg")
+    assert [c.name for c in record.channels] == ["U L1", "U L2", "U L3", "I L1", "I L2", "I L3"]
+    before = np.abs(np.array([c.samples[:4500] for c in record.channels[:3]])).max()
+    assert before == pytest.approx(180e3, rel=0.02)
+    assert record.stretches[0].rate_hz == 1.25e6
+    counts = record.channels[0].samples / 12.2
+    assert np.allclose(counts, np.rint(counts), atol=1e-6)
+
+
+def test_seed_decides_everything(tmp_path):
+    folders = [simulated(tmp_path, MAIN, seed=seed, name=name)[1] for seed, name in ((1, "a"), (1, "b"), (2, "c"))]
+    texts = [(folder / "works.csv").read_text(encoding="utf-8") for folder in folders]
+    assert texts[0] == texts[1] != texts[2]
+
+
+def test_case_file_keeps_what_a_case_may_hold(tmp_path):
+    _, folder = simulated(tmp_path, LINE)
+    case = load_case(folder / "case.toml")
+    assert case.title == "Alder Bank – Thorn Cross (invented)"
+    assert case.route.sections[0].length.u == pytest.approx(50.0)
+    assert case.terminals[1].channels["ic"] == "I L3"
+
+
+@pytest.mark.parametrize(
+    ("old", "new", "message"),
+    [
+        ('distance = "31.4 km"', 'distance = "131.4 km"', "not inside the section of 96300 m"),
+        ('type = "bg"', 'type = "xg"', "'xg' is unknown; choose one of ag"),
+        ('section = "Alder Bank-Thorn Cross"', 'section = "A-B"', "no section 'A-B'"),
+        ('onset = "4 ms"', 'onset = "9 ms"', "not inside the recording"),
+        ('ground_speed = "272 m/us"', "", "three phases need ground_speed"),
+        ('resistance = "10 ohm"', "resistance = 10", "write a number with its unit in quotes"),
+        ('node = "Thorn Cross"\nimp', 'node = "Nowhere"\nimp', "'Nowhere' is not a node"),
+        ('va = "U L1"', 'p = "U L1"', "'p' is not a role on a line"),
+        ('kind = "line"', 'kind = "pipe"', "a fault cannot happen on a pipe"),
+        ('duration = "8 ms"', 'duration = "8 ms"\ncolour = "blue"', "colour"),
+        ('clock = "± 0.1 us"', 'clock = "± 1 s"', "before the record starts|leave no route|early"),
+        ("[recorder]", "[recorder", "not a TOML text file"),
+    ],
+)
+def test_wrong_scenarios_leave_nothing_behind(tmp_path, old, new, message):
+    assert old in LINE
+    result, folder = simulated(tmp_path, LINE.replace(old, new), seed=1)
+    assert result.exit_code == 2
+    assert re.search(message, result.stderr)
+    assert "Traceback" not in result.stderr
+    assert sorted(p.name for p in folder.parent.iterdir()) == ["scenario.toml"]
+
+
+def test_existing_folder_and_missing_scenario_are_refused(tmp_path):
+    simulated(tmp_path, MAIN)
+    again, _ = simulated(tmp_path, MAIN)
+    assert again.exit_code == 2
+    assert "is there already; give a folder that does not exist yet" in again.stderr
+    with pytest.raises(CaseError, match="give the path of a scenario file"):
+        load_scenario(tmp_path / "none.toml")
