@@ -99,3 +99,28 @@ def test_dispersive_impedance_recovers_the_waves():
     f, b = split_dispersive(outgoing + incoming, through, rate, impedance)
     assert rms(f - outgoing) / rms(outgoing) < 0.01
     assert rms(b - incoming) / rms(incoming) < 0.01
+
+
+def test_current_and_voltage_give_the_waves_back_under_noise():
+    rng = np.random.default_rng(7)
+    out, back = bursts(rng, 8192, 500.0)
+    u, i = out + back, (out - back) / 400.0
+    noisy = [x + rng.normal(0, 0.01 * rms(x), x.size) for x in (u, i)]
+    found = [in_band(x, 500.0) for x in split(*noisy, 400.0)]
+    assert rms(found[0] - out) / rms(out) < 0.01
+    assert rms(found[1] - back) / rms(back) < 0.01
+
+
+def test_direction_of_a_thousand_random_events():
+    # a step from the route or from behind the terminal, at 15 dB over the noise of either channel
+    rng = np.random.default_rng(11)
+    right = 0
+    for _ in range(1000):
+        from_route = bool(rng.integers(2))
+        onset = rng.integers(100, 156)
+        wave = rng.choice([-1.0, 1.0]) * (np.arange(256) >= onset)
+        noise = 10 ** (-15 / 20) * rng.normal(size=(2, 256))
+        u, i = wave + noise[0], ((-wave if from_route else wave) + noise[1]) / 400.0
+        outgoing, incoming = (np.abs(x[onset : onset + 16].mean()) for x in split(u, i, 400.0))
+        right += (incoming > outgoing) == from_route
+    assert right >= 990

@@ -1,6 +1,7 @@
 """``twlocate speed``: the wave speed and impedance of a section from what it is built of."""
 
 from collections.abc import Callable
+from pathlib import Path
 from typing import Any, TypeVar
 
 import click
@@ -149,6 +150,34 @@ def line(phases: Any, wires: Any, bundle: int, **q: Any) -> None:
     with failing_in_one_line():
         found = line_speeds(conductors, ground, inputs, frequency_hz=_hertz(q["frequency"]))
     _show(list(found), "ohm")
+
+
+@speed.command()
+@click.argument("case", type=click.Path(path_type=Path))
+@click.option("--at", "place", required=True, help="A node's name, or a distance such as '62.3 km ± 20 m'.")
+@click.option("--section", help="Section of the distance, as 'A-B'; needless where there is only one.")
+def calibrate(case: Path, place: str, section: str | None) -> None:
+    """Estimate section speeds from an event of known origin recorded at two or more ends.
+
+    The recordings of CASE hold the event: an energisation, a valve operation, an external fault, a fault that was
+    found. Its clocks must be known.
+    """
+    from twlocate.calibrating import calibrate as estimate
+    from twlocate.calibrating import origin_at
+    from twlocate.case import load_case
+    from twlocate.quantity import parse_quantity
+    from twlocate.reporting.speeds import format_calibrated
+
+    with failing_in_one_line():
+        loaded = load_case(case)
+        at: Any = place
+        if place not in loaded.route.nodes and place[:1].isdigit():
+            try:
+                at = parse_quantity(place, "m")
+            except ValueError as error:
+                raise click.BadParameter(str(error), param_hint="--at") from error
+        found = estimate(loaded, origin_at(loaded.route, at, section))
+    click.echo("\n\n".join(format_calibrated(one) for one in found))
 
 
 def _hertz(frequency: Any) -> float:
