@@ -4,6 +4,7 @@ import numpy as np
 import pytest
 
 from twlocate.simulation import Network, Span, laplace_grid, pipe, ramp, solve, step, through_into, uniform_line
+from twlocate.simulation.media import constant_line
 from twlocate.simulation.network import span_admittance
 from twlocate.waves import split
 
@@ -43,6 +44,16 @@ def test_capacitor_at_the_end_of_wadhwa_example_12_4():
     pulse = step(grid.s) - step(grid.s, 2e-6)
     across = solve(network, grid.s, {"A": 2 * 500 / 350 * pulse[:, None]})
     assert grid.to_time(across["B"]).max() == pytest.approx(851.14, rel=2e-3)
+
+
+def test_attenuation_of_wadhwa_example_12_6():
+    # C. L. Wadhwa, Electrical Power Systems, Ex 12.6: 50 kV over 50 km of 6 ohm/km and 400 ohm: 50·exp(−R·x/2Z) =
+    # 34.364 kV (recomputed; the book's companion prints a slip)
+    grid = laplace_grid(400e-6, 10e6)
+    line = constant_line(np.array([3e8]), np.array([400.0]), loss_rate=6e-3 / (400 / 3e8))
+    network = Network((Span("A", "B", 50e3, line), Span("B", "C", 50e3, line)), held=frozenset({"A"}))
+    volts = grid.to_time(solve(network, grid.s, {}, {"A": 50 * step(grid.s)[:, None]})["B"])[:, 0]
+    assert volts[round(50e3 / 3e8 * 10e6) + 9] == pytest.approx(34.364, rel=3e-3)
 
 
 def valve_closing(speed=1200.0, length=6000.0, **friction):

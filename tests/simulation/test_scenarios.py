@@ -79,6 +79,7 @@ to = "Tank"
 length = "4.2 km ± 4 m"
 speed = "1150 m/s ± 8 m/s"
 impedance = "4.1e6 Pa*s/m^3"
+loss_rate = "0.01 1/s"
 
 [[terminal]]
 node = "Works"
@@ -136,7 +137,7 @@ def test_burst_of_the_height_joukowsky_gives(tmp_path):
     pressure = record.channels[0].samples
     assert pressure[:2000].mean() == pytest.approx(600e3, abs=20)  # 1e-4 of the 160 kPa it ends up lower
     after = pressure[int(11.7 * 250) : int(12.3 * 250)]  # past the front at 11.4 s, ahead of its echo by the break
-    assert 600e3 - after.mean() == pytest.approx(4.1e6 * 0.02, rel=0.005)
+    assert 600e3 - after.mean() == pytest.approx(4.1e6 * 0.02, rel=0.02)  # and a little friction
 
 
 def test_line_recordings_hold_the_steady_state_and_the_step(tmp_path):
@@ -171,6 +172,7 @@ def test_case_file_keeps_what_a_case_may_hold(tmp_path):
         ('type = "bg"', 'type = "xg"', "'xg' is unknown; choose one of ag"),
         ('section = "Alder Bank-Thorn Cross"', 'section = "A-B"', "no section 'A-B'"),
         ('onset = "4 ms"', 'onset = "9 ms"', "not inside the recording"),
+        ('impedance = "385 ohm"', 'impedance = "385 ohm"\nloss_rate = "-1 1/s"', "loss_rate -1 1/s is negative"),
         ('ground_speed = "272 m/us"', "", "three phases need ground_speed"),
         ('resistance = "10 ohm"', "resistance = 10", "write a number with its unit in quotes"),
         ('node = "Thorn Cross"\nimp', 'node = "Nowhere"\nimp', "'Nowhere' is not a node"),

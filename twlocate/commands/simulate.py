@@ -15,7 +15,8 @@ def simulate(scenario: Path, out: Path, seed: int) -> None:
     """Simulate SCENARIO and write recordings, truth.json and a ready case.toml to a new folder.
 
     SCENARIO is a case file with an [event] and a [recorder] table, and an [[end]] table for what hangs on a node.
-    Lengths, speeds, delays and clock offsets are drawn from their stated uncertainties. Sections are loss-free.
+    Lengths, speeds, delays and clock offsets are drawn from their stated uncertainties. What a pipe carries is taken at
+    rest, so flow_speed is refused.
     """
     import tomllib
 

@@ -14,15 +14,6 @@ ANCHORAGE: Mapping[str, Callable[[float], float]] = {
 """Thin-wall factor c₁: anchored at the upstream end only; against axial movement throughout; expansion joints
 throughout (E. B. Wylie and V. L. Streeter, Fluid Transients in Systems, 1993, ch. 1, from memory)."""
 
-WALLS: Mapping[str, tuple[float, float]] = {
-    "steel": (207e9, 0.30),
-    "ductile iron": (172e9, 0.28),
-    "pvc": (3.3e9, 0.45),
-    "hdpe": (0.8e9, 0.46),
-}
-"""Young's modulus (Pa) and Poisson's ratio of common pipes (handbook values from memory; plastics vary by tens of
-per cent with make, age and temperature)."""
-
 
 def wall_factor(bore: float, wall: float, poisson: float, anchorage: str, *, thick: bool = True) -> float:
     """Return c₁ in the wave speed's K·D·c₁/(E·e).

@@ -31,18 +31,22 @@ def uniform_line(resistance: float, inductance: float, capacitance: float, condu
     return Medium(modes)
 
 
-def constant_line(speeds: FloatArray, impedances: FloatArray) -> Medium:
-    """Return a loss-free section of one mode, or of three phases with (ground, aerial, aerial) modes.
+def constant_line(speeds: FloatArray, impedances: FloatArray, loss_rate: float = 0.0) -> Medium:
+    """Return a section of one mode, or of three phases with (ground, aerial, aerial) modes.
 
     Parameters
     ----------
     speeds, impedances : ndarray, shape (n,)
-        m/s, and Ω or Pa·s/m³, of each mode; n is 1 or 3.
+        m/s, and Ω or Pa·s/m³, of each mode without loss; n is 1 or 3.
+    loss_rate : float
+        R/L of a line, or f·|v|/D of a pipe, 1/s: γ = (s/v)·√(1 + r/s), and Z rises by the same root.
     """
     transform = np.eye(1) if len(speeds) == 1 else np.asarray(np.linalg.inv(CLARKE), dtype=np.float64)
 
     def modes(s: ComplexArray) -> tuple[ComplexArray, ComplexArray]:
-        return s[:, None] / speeds, np.broadcast_to(impedances.astype(np.complex128), (s.size, len(speeds)))
+        root: ComplexArray = np.sqrt(1 + loss_rate / s)[:, None]
+        gamma, z = s[:, None] * root / speeds, root * impedances
+        return gamma, z
 
     return Medium(modes, transform)
 

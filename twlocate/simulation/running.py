@@ -102,7 +102,7 @@ def _network(scenario: Scenario, drawn: Drawn) -> Network:
     """Return the route with the event's section cut in two at the event, without the event itself."""
     spans = []
     for index, section in enumerate(scenario.section):
-        medium = constant_line(*_modes(section, float(drawn.speeds[index]), scenario))
+        medium = constant_line(*_modes(section, float(drawn.speeds[index]), scenario), section.loss_rate.value)
         length, x = float(drawn.lengths_m[index]), scenario.event.distance.value
         if index == scenario.event_section:
             spans += [

@@ -28,13 +28,15 @@ class _Form(BaseModel):
 
 
 class SectionForm(_Form):
-    """A section as in a case file, and its ground mode on a three-phase line."""
+    """A section as in a case file, and what only the simulator needs: loss, and the ground mode of three phases."""
 
     from_node: str = Field(alias="from")
     to_node: str = Field(alias="to")
     length: Annotated[Quantity, _in("m")]
     speed: Annotated[Quantity, _in("m/s")]
     impedance: str
+    loss_rate: Annotated[Quantity, _in("1/s")] = Quantity(0.0)
+    """R/L of a line, f·|v|/D of a pipe."""
     ground_speed: Annotated[Quantity | None, _in("m/s")] = None
     ground_impedance: Annotated[Quantity | None, _in("ohm")] = None
 
@@ -138,6 +140,8 @@ class Scenario(_Form):
         for index, section in enumerate(self.section, 1):
             if section.length.value <= 0 or section.speed.value <= 0:
                 faults.append(f"section {index}: length and speed must be above 0")
+            if section.loss_rate.value < 0:
+                faults.append(f"section {index}: loss_rate {section.loss_rate.value:g} 1/s is negative")
             if self.phases == 3 and (section.ground_speed is None or section.ground_impedance is None):
                 faults.append(f"section {index}: three phases need ground_speed and ground_impedance")
         return faults

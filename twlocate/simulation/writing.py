@@ -18,7 +18,7 @@ START_TEXT = "2026-01-01T00:00:00.000000000Z"
 
 UNITS = {"v": "V", "i": "A", "p": "Pa", "q": "m**3/s"}
 _SCENARIO_ONLY = ("event", "recorder", "end")
-_SECTION_ONLY = ("ground_speed", "ground_impedance")
+_SECTION_ONLY = ("loss_rate", "ground_speed", "ground_impedance")
 
 
 def write_simulated(scenario: Scenario, tables: dict[str, Any], simulated: Simulated, folder: Path) -> Path:
