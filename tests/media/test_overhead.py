@@ -74,6 +74,16 @@ def test_configuration_601_of_the_13_node_feeder():
     )
 
 
+def test_sequence_impedances_of_kersting_example_4_1():
+    # the same book: Z012 of the line of Ex 4.1, ohm/mile
+    a = np.exp(2j * np.pi / 3)
+    sequence = np.array([[1, 1, 1], [1, a**2, a], [1, a, a**2]])
+    z012 = np.linalg.inv(sequence) @ (reduced(kersting(29.0, 25.0))[0][0] * MILE) @ sequence
+    assert z012[0, 0] == pytest.approx(0.7735 + 1.9373j, abs=2e-4)
+    assert z012[1, 1] == pytest.approx(0.3061 + 0.6270j, abs=2e-4)
+    assert z012[2, 1] == pytest.approx(0.0723 - 0.0059j, abs=2e-4)
+
+
 def test_complex_depth_beside_carson():
     # Deri et al., IEEE PAS-100, 1981, against modified Carson: 1.7 % in the resistance, 0.8 % in the reactance
     wire = (feet(0.0, 28.0, 0.0313, 0.0313, 0.0),)

@@ -81,6 +81,7 @@ def test_gas_and_water_by_name():
         ([*LINE, "--phase", "3 m"], "is not a place"),
         ([*LINE, "--sag", "40 m"], "must be above the ground"),
         ([*LINE, "--frequency", "0 Hz"], "is not positive"),
+        ([*CABLE, "--permittivity", "0.9"], "below 1, that of a vacuum"),
         ([*CABLE, "--sheath", "12 mm"], "do not grow outwards"),
     ],
 )

@@ -169,6 +169,11 @@ def test_case_file_keeps_what_a_case_may_hold(tmp_path):
     ("old", "new", "message"),
     [
         ('distance = "31.4 km"', 'distance = "131.4 km"', "not inside the section of 96300 m"),
+        ('impedance = "385 ohm"', 'impedance = "385 m"', "section 1, impedance: '385 m' cannot be read"),
+        ('impedance = "120 ohm"', 'impedance = "-1 ohm"', "end 1, impedance: '-1 ohm' must be above 0 or 0"),
+        ('resistance = "10 ohm"', 'resistance = "0 ohm"', "event, resistance: must be above 0"),
+        ('rate = "1.25 MHz"', 'rate = "1.25 kHz"', "is 10 samples; it must be 64 to"),
+        ('"thorn-cross.cfg"', '"alder-bank.cfg"', "'alder-bank.cfg' is named twice"),
         ('type = "bg"', 'type = "xg"', "'xg' is unknown; choose one of ag"),
         ('section = "Alder Bank-Thorn Cross"', 'section = "A-B"', "no section 'A-B'"),
         ('onset = "4 ms"', 'onset = "9 ms"', "not inside the recording"),

@@ -99,6 +99,8 @@ def cable_speed(inputs: Inputs, *, frequency_hz: float) -> SectionSpeed:
         Where most of the wave's energy is.
     """
     _check_positive(inputs, tuple(inputs))
+    if inputs["permittivity"].value < 1:
+        raise TwlocateError(f"permittivity {inputs['permittivity'].value:g} is below 1, that of a vacuum")
     radii = [inputs[name].value for name in ("core_radius_m", "insulation_inner_m", "insulation_outer_m")]
     radii.append(inputs["sheath_inner_m"].value)
     if not (radii[0] <= radii[1] < radii[2] <= radii[3]):

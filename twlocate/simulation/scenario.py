@@ -11,6 +11,9 @@ from twlocate.quantity import Quantity, parse_quantity
 from twlocate.simulation.events import FAULTS
 
 IMPEDANCE_UNIT = {"line": "ohm", "pipe": "Pa*s/m**3"}
+FEWEST_SAMPLES, MOST_SAMPLES = 64, 2_000_000
+"""Of a recording; the most needs some 2 GB for three phases and four nodes."""
+
 ROLES = {"line": ("va", "vb", "vc", "ia", "ib", "ic", "v", "i"), "pipe": ("p", "q")}
 
 
@@ -71,6 +74,7 @@ class FaultForm(_Form):
     distance: Annotated[Quantity, _in("m")]
     onset: Annotated[Quantity, _in("s")]
     type: str = "ag"
+    """On three phases; on one conductor every fault is to ground."""
     resistance: Annotated[Quantity, _in("ohm")]
     voltage: Annotated[Quantity, _in("V")]
     """Peak, of the sources behind the ends, to ground."""
@@ -130,7 +134,13 @@ class Scenario(_Form):
 
     @model_validator(mode="after")
     def _names_and_sizes(self) -> "Scenario":
-        faults = [*self._section_faults(), *self._node_faults(), *self._event_faults()]
+        faults = [
+            *self._section_faults(),
+            *self._impedance_faults(),
+            *self._node_faults(),
+            *self._event_faults(),
+            *self._recorder_faults(),
+        ]
         if faults:
             raise ValueError("; ".join(faults))
         return self
@@ -144,6 +154,31 @@ class Scenario(_Form):
                 faults.append(f"section {index}: loss_rate {section.loss_rate.value:g} 1/s is negative")
             if self.phases == 3 and (section.ground_speed is None or section.ground_impedance is None):
                 faults.append(f"section {index}: three phases need ground_speed and ground_impedance")
+        return faults
+
+    def _impedance_faults(self) -> list[str]:
+        unit, faults = IMPEDANCE_UNIT[self.kind], []
+        stated = [(f"section {k}", s.impedance, False) for k, s in enumerate(self.section, 1)]
+        stated += [(f"end {k}", end.impedance, True) for k, end in enumerate(self.end, 1)]
+        for place, text, may_be_zero in stated:
+            try:
+                value = parse_quantity(text, unit).value
+            except ValueError as error:
+                faults.append(f"{place}, impedance: {error}")
+                continue
+            if value < 0 or (value == 0 and not may_be_zero):
+                faults.append(f"{place}, impedance: {text!r} must be above 0{' or 0' if may_be_zero else ''}")
+        return faults
+
+    def _recorder_faults(self) -> list[str]:
+        samples = self.recorder.rate.value * self.recorder.duration.value
+        files = [terminal.recording for terminal in self.terminal]
+        faults = [
+            f"terminal, recording: {name!r} is named twice" for name in sorted(set(files)) if files.count(name) > 1
+        ]
+        if not FEWEST_SAMPLES <= samples <= MOST_SAMPLES:
+            limits = f"{FEWEST_SAMPLES} to {MOST_SAMPLES}"
+            faults.append(f"recorder: rate times duration is {samples:g} samples; it must be {limits}")
         return faults
 
     def _node_faults(self) -> list[str]:
@@ -168,7 +203,11 @@ class Scenario(_Form):
         if event.section.replace("–", "-") not in names:
             return [f"event, section: no section {event.section!r}; sections are {', '.join(names)}"]
         length = self.section[self.event_section].length.value
-        faults = []
+        faults = [
+            f"event, {name}: must be above 0"
+            for name in ("resistance", "opening", "frequency", "outflow", "voltage")
+            if getattr(event, name, Quantity(1.0)).value <= 0
+        ]
         if not 0 < event.distance.value < length:
             faults.append(f"event, distance: {event.distance.value:g} m is not inside the section of {length:g} m")
         if isinstance(event, FaultForm) and event.type not in FAULTS:
