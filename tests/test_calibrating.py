@@ -9,10 +9,11 @@ from click.testing import CliRunner
 
 from tests.simulation.test_scenarios import LINE, MAIN
 from twlocate.__main__ import main
-from twlocate.calibrating import calibrated_speeds, origin_at
+from twlocate.calibrating import Calibrated, calibrated_speeds, origin_at
 from twlocate.errors import CaseError
 from twlocate.position import Reading, Station
 from twlocate.quantity import Quantity
+from twlocate.reporting.speeds import format_calibrated
 from twlocate.routes import Route, Section
 
 LENGTH, SPEED = Quantity(100e3, 40.0), Quantity(2.94e8, 1.5e6)
@@ -68,6 +69,15 @@ def test_contradiction_is_measured():
     assert found.pull < -10
 
 
+def test_text_says_when_a_move_is_odd():
+    texts = [
+        format_calibrated(Calibrated("A–B", Quantity(1000.0, 10.0), Quantity(value, 6.0))) for value in (1003.0, 1032.0)
+    ]
+    assert 'speed = "1003 m/s ± 6 m/s"' in texts[0]
+    assert "standard uncertainties" not in texts[0]
+    assert "4.0 of its standard uncertainties: check the place" in texts[1]
+
+
 def simulate(tmp_path, text, seed):
     scenario = tmp_path / "scenario.toml"
     scenario.write_text(text, encoding="utf-8")
@@ -112,6 +122,13 @@ def test_two_known_clocks_are_needed(tmp_path):
     result = CliRunner().invoke(main, ["speed", "calibrate", str(case), "--at", "Works"])
     assert result.exit_code == 3
     assert "1 terminals with a known clock" in result.stderr
+
+
+def test_place_that_cannot_be_is_refused(tmp_path):
+    case, _ = simulate(tmp_path, MAIN, 0)
+    result = CliRunner().invoke(main, ["speed", "calibrate", str(case), "--at", "4 km"])
+    assert result.exit_code == 3
+    assert re.search(r"\d+ standard uncertainties; the place, a clock, a length or the stated speed", result.stderr)
 
 
 def test_distance_needs_a_section_where_there_are_several():

@@ -15,6 +15,9 @@ from twlocate.quantity import Quantity
 from twlocate.routes import Route, direct_path, travel_time
 from twlocate.routes.travel import N_INPUTS
 
+CONTRADICTION = 6.0
+"""A move beyond this many standard uncertainties is a mistake, not a calibration (common practice, no source)."""
+
 ROUNDS = 4
 """Arrival times are all but linear in the speeds; each round brings the remaining error to its square."""
 
@@ -80,7 +83,7 @@ def calibrate(case: Case, origin: Origin) -> tuple[Calibrated, ...]:
     Raises
     ------
     NoPosition
-        Fewer than two terminals with a known clock saw the event.
+        Fewer than two terminals with a known clock saw the event, or it contradicts what the case file states.
     RecordError
         A recording cannot be read or used.
     """
@@ -95,7 +98,17 @@ def calibrate(case: Case, origin: Origin) -> tuple[Calibrated, ...]:
         raise NoPosition(
             f"{len(usable)} terminals with a known clock saw a front; a calibration needs two that listen to the event"
         )
-    return calibrated_speeds(case.route, origin, stations, [usable[index] for index in sorted(usable)])
+    fatal = [f"{gate.name}: {gate.detail}" for gate in finding.checks if gate.fatal and not gate.passed]
+    if fatal:
+        raise NoPosition("; ".join(fatal))
+    found = calibrated_speeds(case.route, origin, stations, [usable[index] for index in sorted(usable)])
+    worst = max(found, key=lambda one: abs(one.pull))
+    if abs(worst.pull) > CONTRADICTION:
+        raise NoPosition(
+            f"the event would move the speed of {worst.section} from {worst.prior.value:g} "
+            f"to {worst.speed.value:g} m/s, {abs(worst.pull):.0f} standard uncertainties; the place, a clock, a length or the stated speed is wrong"
+        )
+    return found
 
 
 def calibrated_speeds(

@@ -66,6 +66,9 @@ def test_gas_and_water_by_name():
     gas = run("gas", "--bore", "0.6 m", "--mixture", "Methane", "--temperature", "300 K", "--pressure", "5 MPa")
     # U. Setzmann and W. Wagner, J. Phys. Chem. Ref. Data 20, 1991, through CoolProp: 439.2547 m/s
     assert speeds(gas.output)[0].value == pytest.approx(439.255, abs=2e-3)
+    steam = run(*PIPE, "--temperature", "200 degC")
+    assert steam.exit_code == 2
+    assert "Water is a gas at 473.15 K" in steam.stderr
     water = run(*PIPE[:-2], "--temperature", "20 degC ± 2 K")
     assert re.search(r"temperature .*100%", water.output)
 
@@ -79,6 +82,8 @@ def test_gas_and_water_by_name():
         ([*PIPE, *WATER, "--gas-fraction", "0.7"], "gas fraction 0.7 is not in 0 to 0.5"),
         ([*LINE, "--phase", "0 m, 24 m"], "two conductors are in one place"),
         ([*LINE, "--phase", "3 m"], "is not a place"),
+        ([*LINE, "--resistance", "0 ohm/km"], "resistance of a conductor is not above 0"),
+        ([*LINE, "--wire-radius", "0 m"], "radius of a conductor is not above 0"),
         ([*LINE, "--sag", "40 m"], "must be above the ground"),
         ([*LINE, "--frequency", "0 Hz"], "is not positive"),
         ([*CABLE, "--permittivity", "0.9"], "below 1, that of a vacuum"),

@@ -127,6 +127,15 @@ def test_transfer_is_reciprocal():
     assert np.abs(there - back).max() < 1e-9 * np.abs(there).max()
 
 
+def test_blocks_of_frequencies_make_no_difference(monkeypatch):
+    grid = laplace_grid(1e-3, RATE)
+    injected = {"B": step(grid.s)[:, None]}
+    whole = solve(mesh(), grid.s, injected)
+    monkeypatch.setattr("twlocate.simulation.network.BLOCK", 100)
+    in_blocks = solve(mesh(), grid.s, injected)
+    assert all(np.array_equal(whole[name], in_blocks[name]) for name in "ABCD")
+
+
 def test_nothing_arrives_before_light_could():
     grid = laplace_grid(2e-3, RATE)
     across = solve(mesh(), grid.s, {"B": step(grid.s, 1e-4)[:, None]})

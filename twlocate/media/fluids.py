@@ -14,6 +14,7 @@ class FluidState:
     """kg/m³"""
     sound_speed: float
     """m/s, isentropic"""
+    is_gas: bool
 
     @property
     def bulk_modulus(self) -> float:
@@ -50,7 +51,8 @@ def fluid_state(fluid: str, temperature_k: float, pressure_pa: float) -> FluidSt
         if len(names) > 1:
             state.set_mole_fractions(fractions)
         state.update(coolprop.PT_INPUTS, pressure_pa, temperature_k)
-        return FluidState(state.rhomass(), state.speed_sound())
+        is_gas = state.phase() in (coolprop.iphase_gas, coolprop.iphase_supercritical_gas)
+        return FluidState(state.rhomass(), state.speed_sound(), is_gas)
     except ValueError as error:
         reason = str(error).splitlines()[0].rstrip(". ")
         raise TwlocateError(

@@ -52,6 +52,10 @@ def pipe_speed(inputs: Inputs, *, anchorage: str, fluid: str | None) -> SectionS
             density, modulus = q["density"], q["bulk_modulus"]
         else:
             state = fluid_state(fluid, q["temperature"], q["pressure"])
+            if state.is_gas:
+                raise TwlocateError(
+                    f"{fluid} is a gas at {q['temperature']:g} K and {q['pressure']:g} Pa; use speed gas"
+                )
             density, modulus = state.density, state.bulk_modulus
         return liquid.with_free_gas(density, modulus, max(q["gas_fraction"], 0.0), q["pressure"])
 
@@ -140,6 +144,9 @@ def line_speeds(
     places = [(c.x_m, c.height_m) for c in (*phases, *ground_wires)]
     if len(set(places)) < len(places):
         raise TwlocateError("two conductors are in one place; give each its own x and height")
+    for name in ("radius_m", "resistance", "bundle_spacing_m"):
+        if any(getattr(c, name) <= 0 for c in (*phases, *ground_wires) if name != "bundle_spacing_m" or c.bundle > 1):
+            raise TwlocateError(f"{name.removesuffix('_m').replace('_', ' ')} of a conductor is not above 0")
     lowest = min(c.mean_height_m for c in (*phases, *ground_wires)) - inputs["height_shift"].u
     if lowest <= 0:
         raise TwlocateError(f"a conductor's mean height less its u is {lowest:g} m; it must be above the ground")

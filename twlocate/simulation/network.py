@@ -8,6 +8,9 @@ import numpy as np
 from twlocate.arrays import ComplexArray
 from twlocate.simulation.media import Medium
 
+BLOCK = 4096
+"""Frequencies solved at a time, which bounds the memory."""
+
 Shunt = Callable[[ComplexArray], ComplexArray]
 """s, shape (frequencies,) → admittance of a node to the reference, shape (frequencies, n, n)."""
 
@@ -74,6 +77,18 @@ def solve(
     """
     imposed = imposed or {}
     _check(network, injected, imposed)
+    blocks = [slice(first, first + BLOCK) for first in range(0, s.size, BLOCK)]
+    solved = [_solve_block(network, s[b], _rows(injected, b), _rows(imposed, b)) for b in blocks]
+    return {name: np.concatenate([block[name] for block in solved]) for name in network.nodes}
+
+
+def _rows(values: Mapping[str, ComplexArray], block: slice) -> dict[str, ComplexArray]:
+    return {name: value[block] for name, value in values.items()}
+
+
+def _solve_block(
+    network: Network, s: ComplexArray, injected: Mapping[str, ComplexArray], imposed: Mapping[str, ComplexArray]
+) -> dict[str, ComplexArray]:
     free = [name for name in network.nodes if name not in network.held]
     n, at = network.conductors, {name: index for index, name in enumerate(free)}
     matrix = np.zeros((s.size, n * len(free), n * len(free)), dtype=np.complex128)

@@ -12,7 +12,7 @@ from twlocate.simulation.events import FAULTS
 
 IMPEDANCE_UNIT = {"line": "ohm", "pipe": "Pa*s/m**3"}
 FEWEST_SAMPLES, MOST_SAMPLES = 64, 2_000_000
-"""Of a recording; the most needs some 2 GB for three phases and four nodes."""
+"""Of a recording."""
 
 ROLES = {"line": ("va", "vb", "vc", "ia", "ib", "ic", "v", "i"), "pipe": ("p", "q")}
 
