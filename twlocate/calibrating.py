@@ -105,8 +105,9 @@ def calibrate(case: Case, origin: Origin) -> tuple[Calibrated, ...]:
     worst = max(found, key=lambda one: abs(one.pull))
     if abs(worst.pull) > CONTRADICTION:
         raise NoPosition(
-            f"the event would move the speed of {worst.section} from {worst.prior.value:g} "
-            f"to {worst.speed.value:g} m/s, {abs(worst.pull):.0f} standard uncertainties; the place, a clock, a length or the stated speed is wrong"
+            f"the event would move the speed of {worst.section} from {worst.prior.value:g} to {worst.speed.value:g} "
+            f"m/s, {abs(worst.pull):.0f} standard uncertainties; the place, a clock, a length or the stated speed "
+            "is wrong"
         )
     return found
 

@@ -7,6 +7,7 @@ import pytest
 
 from twlocate.media import overhead
 from twlocate.media.overhead import Conductor
+from twlocate.waves import eigenmodes
 
 FOOT, MILE = 0.3048, 1609.344
 OMEGA_60 = 2 * np.pi * 60
@@ -150,3 +151,40 @@ def test_impossible_lines_are_refused():
         overhead.series_impedance((Conductor(0.0, 5.0, 0.01, 1e-4, sag_m=9.0),), s, 100.0)
     with pytest.raises(ValueError, match="'flat' is unknown; choose one of complex depth, carson"):
         overhead.series_impedance(TOWER, s, 100.0, earth="flat")
+
+
+def test_concentric_neutral_cables_of_the_13_node_feeder():
+    # IEEE 13-node test feeder, 606: three cables 6 in apart; the neutral strands of each stand for one conductor at the
+    # radius R = 0.05108 ft around its core (GMR 0.04864 ft, 1.1440 ohm/mile); ohm/mile
+    cores = [feet(x, 20.0, 0.0171, 0.0171, 0.4100) for x in (0.0, 0.5, 1.0)]
+    neutrals = [feet(x, 20.0 + 0.05108, 0.04864, 0.04864, 1.1440) for x in (0.0, 0.5, 1.0)]
+    z = reduced((*cores, *neutrals))[0][0] * MILE
+    assert [z[0, 0], z[0, 1], z[0, 2], z[1, 1]] == pytest.approx(
+        [0.7982 + 0.4463j, 0.3192 + 0.0328j, 0.2849 - 0.0143j, 0.7891 + 0.4041j], abs=3e-3
+    )
+
+
+def test_modal_speeds_of_a_distribution_line():
+    # from Z of Kersting's Ex 4.1 and B of the 123-node feeder at 60 Hz: 0.796, 0.944 and 0.959 of the speed of light
+    # (recomputed; the heights of the two differ by one foot, as published)
+    z, y = reduced(kersting(29.0, 25.0))[0], reduced(kersting(28.0, 24.0))[1]
+    speeds = np.sort(OMEGA_60 / eigenmodes(z, y).gamma.imag[0]) / 299_792_458.0
+    assert speeds == pytest.approx([0.796, 0.944, 0.959], abs=2e-3)
+
+
+def test_impedance_matrices_are_symmetric_and_passive():
+    s = np.array([1e3 + 2j * np.pi * f for f in (50.0, 1e4, 1e6)])
+    z, y = overhead.phase_matrices(TOWER, s, 100.0, 3)
+    for matrix in (z, y):
+        assert np.allclose(matrix, matrix.swapaxes(1, 2), rtol=1e-9)
+        assert (np.linalg.eigvalsh(matrix.real) > 0).all()
+
+
+@pytest.mark.parametrize("resistivity", [10.0, 1000.0])
+def test_poor_earth_slows_the_ground_mode_more(resistivity):
+    f = np.array([1e5])
+    speeds, reference = (
+        np.sort(overhead.modal_speeds(overhead.line_modes(TOWER, f, rho, 3), f)[0]) for rho in (resistivity, 100.0)
+    )
+    assert (speeds[0] < reference[0]) == (resistivity > 100.0)
+    assert abs(speeds[2] / reference[2] - 1) < 0.005

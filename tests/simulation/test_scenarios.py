@@ -204,3 +204,84 @@ def test_existing_folder_and_missing_scenario_are_refused(tmp_path):
     assert "is there already; give a folder that does not exist yet" in again.stderr
     with pytest.raises(CaseError, match="give the path of a scenario file"):
         load_scenario(tmp_path / "none.toml")
+
+
+TEE = (
+    """
+title = "Three legs (invented)"
+kind = "pipe"
+
+[[section]]
+from = "North"
+to = "Tee"
+length = "2.1 km ± 2 m"
+speed = "1150 m/s ± 3 m/s"
+impedance = "4.1e6 Pa*s/m^3"
+
+[[section]]
+from = "Tee"
+to = "East"
+length = "1.7 km ± 2 m"
+speed = "1150 m/s ± 3 m/s"
+impedance = "4.1e6 Pa*s/m^3"
+
+[[section]]
+from = "Tee"
+to = "South"
+length = "2.6 km ± 2 m"
+speed = "1020 m/s ± 3 m/s"
+impedance = "9e6 Pa*s/m^3"
+"""
+    + "".join(
+        f'[[terminal]]\nnode = "{node}"\nrecording = "{node}.csv"\nchannels = {{ p = "p" }}\nclock = "± 1 ms"\n'
+        for node in ("North", "East", "South")
+    )
+    + """
+[event]
+kind = "burst"
+section = "Tee-South"
+distance = "900 m"
+onset = "10 s"
+outflow = "0.02 m^3/s"
+opening = "30 ms"
+
+[recorder]
+rate = "250 Hz"
+duration = "20 s"
+across_noise = 80.0
+"""
+)
+
+
+def test_burst_on_a_leg_of_a_tee_is_found_on_that_leg(tmp_path):
+    result, folder = simulated(tmp_path, TEE)
+    assert result.exit_code == 0
+    found = json.loads(CliRunner().invoke(main, ["locate", str(folder / "case.toml"), "--json"]).stdout)
+    assert found["position"]["section"] == "Tee–South"
+    assert found["position"]["distance_m"] == pytest.approx(900.0, abs=25.0)
+
+
+def test_recorder_adds_the_noise_that_was_asked_for(tmp_path):
+    _, folder = simulated(tmp_path, MAIN)
+    quiet = read(folder / "tank.csv").channels[0].samples[:2000]
+    assert np.std(quiet) == pytest.approx(100.0, rel=0.05)
+
+
+def test_delay_of_a_terminal_makes_its_record_late(tmp_path):
+    exact = MAIN.replace("± 4 m", "± 0 m").replace("± 8 m/s", "± 0 m/s").replace("across_noise = 100.0", "")
+    exact = exact.replace('clock = "± 1 ms"', "")
+    delayed = exact.replace('node = "Tank"\nrecording', 'node = "Tank"\ndelay = "400 ms"\nrecording')
+    records = [
+        read(simulated(tmp_path, text, name=name)[1] / "tank.csv").channels[0].samples
+        for name, text in (("on-time", exact), ("late", delayed))
+    ]
+    assert np.allclose(records[1][100:], records[0][:-100], atol=30.0)  # Pa, of a step of 60 kPa
+    assert np.abs(records[1] - records[0]).max() > 1e4
+
+
+def test_closed_end_has_no_flow(tmp_path):
+    # the works are a closed end: pressure moves there, flow does not
+    _, folder = simulated(tmp_path, MAIN.replace("across_noise = 100.0", ""))
+    pressure, flow = (channel.samples for channel in read(folder / "works.csv").channels)
+    assert np.abs(flow).max() < 1e-3 * 0.02
+    assert pressure[-1] < pressure[0]
