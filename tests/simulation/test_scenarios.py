@@ -58,7 +58,7 @@ onset = "4 ms"
 type = "bg"
 resistance = "10 ohm"
 voltage = "180 kV"
-angle = "210 degree"
+angle = "-20 degree"
 
 [recorder]
 rate = "1.25 MHz"
