@@ -158,7 +158,7 @@ def test_a_trace_must_be_finite():
 
 
 def test_hum_that_steepens_before_the_event_is_no_front():
-    """A fifth of a cycle from the crest on: the noise is measured where the hum is level, the front comes on its slope."""
+    """A fifth of a cycle from the crest on: the noise is measured where the hum is level, the front is on its slope."""
     rng = np.random.default_rng(11)
     rate, n, onset = 1.25e6, 10_000, 5_200.3
     hum = 180e3 * np.cos(2 * np.pi * 50 * np.arange(n) / rate + np.array([[0.0], [-2.1], [2.1]]))

@@ -16,7 +16,7 @@ from twlocate.arrays import FloatArray
 TINY = 1e-300
 
 SILENT_SHARE = 0.5
-"""Of the converter step, where the noise is too small to spread the rounding: a step up or down and back is then no front."""
+"""Of the converter step, where the noise is too small to spread the rounding: one step up and back is then no front."""
 
 MEDIAN_OF_NORMAL = 0.6744897501960817
 """The median of |z| for a standard normal z."""
