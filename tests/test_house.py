@@ -20,6 +20,7 @@ ROOMS = [
     "case",
     "observing",
     "locating",
+    "calibrating",
     "reporting",
     "commands",
     "__main__",

@@ -6,6 +6,8 @@ import click
 
 from twlocate.commands.inspect import inspect
 from twlocate.commands.locate import locate
+from twlocate.commands.simulate import simulate
+from twlocate.commands.speed import speed
 
 # The matrices here are small: more threads cost more than they save, and with one the last bits of a sum do not
 # depend on the machine, so that the same inputs give the same bytes.
@@ -20,6 +22,8 @@ def main() -> None:
 
 main.add_command(inspect)
 main.add_command(locate)
+main.add_command(simulate)
+main.add_command(speed)
 
 if __name__ == "__main__":
     main()

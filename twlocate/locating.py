@@ -80,7 +80,7 @@ def locate(case: Case, *, coverage: float = 0.95) -> Finding:
     """
     observations = tuple(observe(case, terminal) for terminal in case.terminals)
     zero_ns = min((o.record.start_ns for o in observations if o.record.start_ns is not None), default=None)
-    stations = [_station(observation) for observation in observations]
+    stations = [station_of(observation) for observation in observations]
     readings = [r for index, observation in enumerate(observations) for r in _readings(index, observation, zero_ns)]
     checks = [*_gates(observations), *_transit_checks(case, stations, readings)]
     found, reason = _estimate(case, stations, readings, checks, coverage)
@@ -100,7 +100,8 @@ def locate(case: Case, *, coverage: float = 0.95) -> Finding:
 # ---------------------------------------------------------------- observations to evidence
 
 
-def _station(observation: Observation) -> Station:
+def station_of(observation: Observation) -> Station:
+    """Return what the arithmetic needs to know of a terminal."""
     terminal = observation.terminal
     return Station(
         terminal.node,

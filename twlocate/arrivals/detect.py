@@ -6,7 +6,7 @@ from statistics import NormalDist
 import numpy as np
 
 from twlocate.arrays import FloatArray
-from twlocate.arrivals.modulus import Modulus, dyadic_scales, haar_coefficients, modulus
+from twlocate.arrivals.modulus import Modulus, dyadic_scales, haar_coefficients, modulus, without_trend
 
 FIRST_LOOK = 0.1
 """The noise is first measured on this share of the record, then on everything before the first front."""
@@ -95,7 +95,8 @@ def _finest(samples: FloatArray, field: Modulus, limit: float, start: int) -> tu
     coarse = int(field.strongest[start])
     stop = start + 2 * field.scales[coarse]
     for index in range(coarse):
-        heights = np.abs(haar_coefficients(samples, field.scales[index])[start:stop])
+        scale = field.scales[index]
+        heights = np.abs(without_trend(haar_coefficients(samples, scale), scale)[start:stop])
         above = np.flatnonzero(heights > limit * field.sigmas[index])
         if above.size:
             return index, start + int(above[0])
