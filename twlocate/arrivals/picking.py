@@ -58,7 +58,7 @@ def pick(trace: Trace, *, false_alarm: float = 1e-3, most: int = 8) -> Picks:
     sigma = robust_sigma(haar_coefficients(samples, first.scale)[first.scale : quiet], trace.step / np.sqrt(12))
     limit = threshold(false_alarm, samples.size, 1)
     candidates = [first, *later_fronts(denoised, first, sigma, limit, most - 1)]
-    fronts = [_time(samples, candidates, index, quiet, trace.step) for index in range(len(candidates))]
+    fronts = [_time(samples, candidates, index, quiet, noise, trace.step) for index in range(len(candidates))]
     arrivals = tuple(
         _arrival(trace, front, candidate, noise) for front, candidate in zip(fronts, candidates, strict=True)
     )
@@ -88,7 +88,7 @@ def _quiet_gate(first: Candidate | None, quiet: int) -> Gate:
     return Gate(name, True, f"{quiet} samples")
 
 
-def _time(samples: FloatArray, candidates: list[Candidate], index: int, quiet: int, step: float) -> Front:
+def _time(samples: FloatArray, candidates: list[Candidate], index: int, quiet: int, noise: Noise, step: float) -> Front:
     """Time one candidate within the room its neighbours leave, on averages if it rises slowly."""
     here = candidates[index]
     reach = max(SMALLEST_REACH, 2 * here.scale)
@@ -98,9 +98,9 @@ def _time(samples: FloatArray, candidates: list[Candidate], index: int, quiet: i
     low = max(behind, here.sample - WINDOW * reach, 0)
     high = min(max(ahead, here.sample + here.scale), here.sample + WINDOW * reach, samples.size)
     if block == 1:
-        return refine(samples, here.sample, reach, here.height, (low, high), measure_noise(samples[:quiet], step))
+        return refine(samples, here.sample, reach, here.height, (low, high), noise)
     averaged = samples[: samples.size // block * block].reshape(-1, block).mean(axis=1)
-    noise = measure_noise(averaged[: quiet // block], step / np.sqrt(block))
+    noise = measure_noise(averaged[: quiet // block], step / float(np.sqrt(block)))
     front = refine(averaged, here.sample / block, reach / block, here.height, (low // block, high // block), noise)
     middle = (block - 1) / 2
     return replace(
