@@ -7,10 +7,11 @@ the joint ways with the best score anywhere are kept.
 """
 
 import itertools
-from collections.abc import Sequence
+from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, replace
 
 import numpy as np
+from numpy.typing import NDArray
 
 from twlocate.arrays import FloatArray
 from twlocate.position.evidence import Reading, Station
@@ -19,9 +20,7 @@ from twlocate.position.inputs import input_variances
 from twlocate.position.linear import linear_model
 from twlocate.routes import Route, TravelTime, travel_time
 
-PLACES_A_SECTION = 97
-MOST_JOINT = 256
-"""About how many ways of all stations together are scored."""
+PLACES_A_SECTION = 193
 
 MOST = 48
 """Explanations kept."""
@@ -54,6 +53,26 @@ class _Scoring:
     grids: tuple[_Places, ...]
 
 
+@dataclass(frozen=True)
+class _Ways:
+    """The ways to take one station's readings that have the same first front, with their log scores (W, G)."""
+
+    parts: tuple[Part, ...]
+    scores: FloatArray
+    ranks: NDArray[np.intp]
+    """(2, G) the best and the second best of them at every place."""
+
+    @property
+    def first(self) -> tuple[tuple[int, Cause], ...]:
+        """The first front, or nothing where all readings are strays."""
+        return self.parts[0].causes[:1]
+
+    @property
+    def best(self) -> FloatArray:
+        """The score of the best of them at every place, (G,)."""
+        return np.asarray(np.take_along_axis(self.scores, self.ranks[:1], axis=0)[0], dtype=np.float64)
+
+
 def explain(
     route: Route, stations: Sequence[Station], readings: Sequence[Reading], window_s: float
 ) -> tuple[Explanation, ...]:
@@ -63,19 +82,48 @@ def explain(
     """
     grids = tuple(_places(index, section.length.value) for index, section in enumerate(route.sections))
     scoring = _Scoring(route, stations, readings, window_s, grids)
-    count = max(round(MOST_JOINT ** (1 / len(stations))), 3)
-    choices = [_best_ways(scoring, station, count) for station in range(len(stations))]
-    found = []
-    for wrong, clock_prior in clock_states(stations):
-        of_clocks: dict[tuple[int, ...], FloatArray] = {}
+    choices = [_ways_by_first(scoring, station) for station in range(len(stations))]
+    found: dict[tuple[Part, ...], dict[frozenset[int], float]] = {}
+    scored = sorted(_states(scoring, choices), key=lambda state: -float(state[2].max()))
+    top = float(scored[0][2].max())
+    for (wrong, _), ways, score in scored:
+        for parts, value in _joint_ways(ways, score, top - BEHIND):
+            of_clocks = found.setdefault(parts, {})
+            of_clocks[wrong] = max(value, of_clocks.get(wrong, -np.inf))
+    priors = dict(clock_states(stations))
+    ranked = sorted(
+        ((value, parts, wrong) for parts, of_clocks in found.items() for wrong, value in of_clocks.items()),
+        key=lambda row: -row[0],
+    )
+    return tuple(_joined(parts, wrong, priors[wrong]) for _, parts, wrong in ranked[:MOST])
+
+
+_State = tuple[tuple[frozenset[int], float], tuple[_Ways, ...], FloatArray]
+"""(wrong clocks, prior), each station's ways with a given first front, and the best joint score at every place."""
+
+
+def _states(scoring: _Scoring, choices: Sequence[Sequence[_Ways]]) -> Iterator[_State]:
+    for state in clock_states(scoring.stations):
         for ways in itertools.product(*choices):
-            firsts = tuple(part.causes[0][0] for part, _ in ways if part.causes)
-            if firsts not in of_clocks:
-                of_clocks[firsts] = _clock_score(scoring, [part.causes[0] for part, _ in ways if part.causes], wrong)
-            score = float(np.max(sum((score for _, score in ways), start=of_clocks[firsts])))
-            found.append((score + float(np.log(clock_prior)), _joined([part for part, _ in ways], wrong, clock_prior)))
-    found.sort(key=lambda item: -item[0])
-    return tuple(explanation for score, explanation in found[:MOST] if score > found[0][0] - BEHIND)
+            firsts = tuple(itertools.chain.from_iterable(way.first for way in ways))
+            clocks = np.log(state[1]) + _clock_score(scoring, firsts, state[0])
+            yield state, ways, np.asarray(clocks + np.sum([way.best for way in ways], axis=0), dtype=np.float64)
+
+
+def _joint_ways(ways: Sequence[_Ways], score: FloatArray, least: float) -> Iterator[tuple[tuple[Part, ...], float]]:
+    """Yield the best joint way at every place, and those with one station's second best, that score above `least`.
+
+    At a given place the stations do not depend on each other, so the best joint way is that of the best ways.
+    """
+    for place in np.flatnonzero(score > least).tolist():
+        best = [int(way.ranks[0, place]) for way in ways]
+        yield tuple(way.parts[index] for way, index in zip(ways, best, strict=True)), float(score[place])
+        for station, way in enumerate(ways):
+            second = int(way.ranks[1, place])
+            loss = float(way.scores[best[station], place] - way.scores[second, place])
+            if second != best[station] and score[place] - loss > least:
+                other = [*best[:station], second, *best[station + 1 :]]
+                yield tuple(w.parts[i] for w, i in zip(ways, other, strict=True)), float(score[place]) - loss
 
 
 def _places(section: int, length_m: float) -> _Places:
@@ -88,25 +136,28 @@ def _joined(parts: Sequence[Part], wrong: frozenset[int], clock_prior: float) ->
     return Explanation(causes, wrong, clock_prior * float(np.prod([part.prior for part in parts])))
 
 
-def _best_ways(scoring: _Scoring, station: int, count: int) -> list[tuple[Part, FloatArray]]:
-    """Return the best ways to take a station's readings, each with its log score at every place."""
-    parts = parts_of(scoring.route, scoring.stations, station, scoring.readings)
+def _ways_by_first(scoring: _Scoring, station: int) -> list[_Ways]:
+    """Score every way to take a station's readings at every place, and group them by their first front."""
     total = sum(reading.station == station for reading in scoring.readings)
     intervals: dict[tuple[int, int, Cause], FloatArray] = {}
-    ways = []
-    for part in parts:
+    groups: dict[tuple[tuple[int, Cause], ...], list[tuple[Part, FloatArray]]] = {}
+    for part in parts_of(scoring.route, scoring.stations, station, scoring.readings):
         strays = total - len(part.causes)
-        score = np.full(
-            sum(grid.x.size for grid in scoring.grids), np.log(part.prior) - strays * np.log(scoring.window_s)
-        )
+        level = float(np.log(part.prior)) - strays * float(np.log(scoring.window_s))
+        score = np.full(sum(grid.x.size for grid in scoring.grids), level)
         for index, cause in part.causes[1:]:
             key = (part.causes[0][0], index, cause)
             if key not in intervals:
                 intervals[key] = _interval_score(scoring, part.causes[0], (index, cause))
-            score = score + intervals[key]
-        ways.append((part, score))
-    ways.sort(key=lambda way: -float(way[1].max()))
-    return ways[:count]
+            score += intervals[key]
+        groups.setdefault(part.causes[:1], []).append((part, score))
+    return [_ranked(rows) for rows in groups.values()]
+
+
+def _ranked(rows: Sequence[tuple[Part, FloatArray]]) -> _Ways:
+    scores = np.array([score for _, score in rows])
+    order = np.argsort(-scores, axis=0)
+    return _Ways(tuple(part for part, _ in rows), scores, order[[0, min(1, len(rows) - 1)]])
 
 
 def _interval_score(scoring: _Scoring, first: tuple[int, Cause], echo: tuple[int, Cause]) -> FloatArray:
