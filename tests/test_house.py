@@ -16,6 +16,7 @@ ROOMS = [
     "routes",
     "arrivals",
     "position",
+    "forms",
     "simulation",
     "case",
     "observing",

@@ -1,31 +1,23 @@
 """The case file: what the route is, where the recordings are, how far the clocks may be trusted (README)."""
 
 import csv
-import difflib
 import tomllib
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
 from pathlib import Path
-from typing import Annotated, Any, Literal
+from typing import Any, Literal
 
-from pydantic import AfterValidator, BaseModel, BeforeValidator, ConfigDict, Field, ValidationError
+from pydantic import Field, ValidationError
 
 from twlocate.errors import CaseError
+from twlocate.forms import IMPEDANCE_UNIT, ROLES, Form, SectionForm, TerminalForm, form_faults, positive
 from twlocate.quantity import Quantity, parse_quantity
 from twlocate.routes import Place, Route, Section
 
 SPEED_OF_LIGHT = 299_792_458.0  # m/s, exact: SI definition of the metre
 
-ROLES = {
-    "line": ("va", "vb", "vc", "ia", "ib", "ic", "v", "i"),
-    "pipe": ("p", "q"),
-}
-"""What a channel can be, by kind of route: phase voltages and currents, one voltage or current; pressure, flow."""
-
 REFLECTS = {"low impedance": -1, None: 0, "high impedance": 1}
 """Sign of the reflection of voltage or pressure at a terminal, by what its bus is against the line or pipe."""
-
-IMPEDANCE_UNIT = {"line": "ohm", "pipe": "Pa*s/m**3"}
 
 
 @dataclass(frozen=True)
@@ -35,7 +27,7 @@ class Terminal:
     node: str
     recording: Path
     channels: Mapping[str, str]
-    """Role (see :data:`ROLES`) to the channel's name in the recording."""
+    """Role (see :data:`~twlocate.forms.ROLES`) to the channel's name in the recording."""
     clock: Quantity | None
     """Offset and standard uncertainty of its clock, s; None: take what the recording says."""
     clock_free: bool
@@ -73,7 +65,7 @@ def load_case(path: Path) -> Case:
     try:
         form = _CaseForm.model_validate(tables)
     except ValidationError as error:
-        raise _case_error(path, [*_form_faults(error), *faults]) from error
+        raise _case_error(path, [*form_faults(error, _CaseForm, _TABLES), *faults]) from error
     faults = faults or [*_value_faults(form)]
     if faults:
         raise _case_error(path, faults)
@@ -102,103 +94,22 @@ def _read_toml(path: Path) -> dict[str, Any]:
         raise CaseError(f"{path}: not TOML: {error}") from error
 
 
-# ---------------------------------------------------------------- the form: one field at a time
+# ---------------------------------------------------------------- the form
 
 
-def _quantity_in(unit: str) -> Any:
-    def read(text: object) -> Quantity:
-        if not isinstance(text, str):
-            raise ValueError(f"{text!r} is not text; write a number with its unit in quotes, like '12.5 {unit}'")
-        return parse_quantity(text, unit)
-
-    return BeforeValidator(read)
-
-
-def _positive(quantity: Quantity) -> Quantity:
-    if quantity.value <= 0:
-        raise ValueError(f"{quantity.value:g} (SI) is not positive")
-    return quantity
-
-
-Length = Annotated[Quantity, AfterValidator(_positive), _quantity_in("m")]
-Speed = Annotated[Quantity, AfterValidator(_positive), _quantity_in("m/s")]
-Flow = Annotated[Quantity, _quantity_in("m/s")]
-Duration = Annotated[Quantity, _quantity_in("s")]
-
-
-def _clock(text: object) -> object:
-    return text if text == "free" else _quantity_in("s").func(text)
-
-
-class _Form(BaseModel):
-    model_config = ConfigDict(extra="forbid", frozen=True, arbitrary_types_allowed=True)
-
-
-class _SectionForm(_Form):
-    from_node: str = Field(alias="from", min_length=1)
-    to_node: str = Field(alias="to", min_length=1)
-    length: Length
-    speed: Speed
-    impedance: str | None = None
-    flow_speed: Flow = Quantity(0.0)
-
-
-class _TerminalForm(_Form):
-    node: str
-    recording: str
-    channels: dict[str, str] = Field(min_length=1)
-    clock: Annotated[Quantity | Literal["free"] | None, BeforeValidator(_clock)] = None
-    delay: Duration = Quantity(0.0)
-    bus: Literal["low impedance", "high impedance"] | None = None
-    launches: Literal["pulse", "step"] | None = None
-
-
-class _PlacesForm(_Form):
+class _PlacesForm(Form):
     file: str
 
 
-class _CaseForm(_Form):
+class _CaseForm(Form):
     title: str = ""
     kind: Literal["line", "pipe"]
-    section: list[_SectionForm] = Field(min_length=1)
-    terminal: list[_TerminalForm] = Field(min_length=1)
+    section: list[SectionForm] = Field(min_length=1)
+    terminal: list[TerminalForm] = Field(min_length=1)
     places: _PlacesForm | None = None
 
 
-def _form_faults(error: ValidationError) -> Iterator[str]:
-    for fault in error.errors():
-        place = _place(fault["loc"])
-        if fault["type"] == "extra_forbidden":
-            yield f"{place}: unknown key{_suggestion(fault['loc'])}"
-        elif fault["type"] == "missing":
-            yield f"{place}: missing; every {_owner(fault['loc'])} needs it"
-        else:
-            yield f"{place}: {fault['msg'].removeprefix('Value error, ')}"
-
-
-def _place(loc: tuple[int | str, ...]) -> str:
-    """Turn ("section", 0, "length") into "section 1, length" (counted as in the file, from one)."""
-    words: list[str] = []
-    for part in loc:
-        if isinstance(part, int):
-            words[-1] += f" {part + 1}"
-        else:
-            words.append(part)
-    return ", ".join(words)
-
-
-_FORMS: dict[str, type[_Form]] = {"section": _SectionForm, "terminal": _TerminalForm, "places": _PlacesForm}
-
-
-def _owner(loc: tuple[int | str, ...]) -> str:
-    return str(loc[0]) if len(loc) > 1 else "case"
-
-
-def _suggestion(loc: tuple[int | str, ...]) -> str:
-    form = _FORMS.get(str(loc[0]), _CaseForm) if len(loc) > 1 else _CaseForm
-    keys = [field.alias or name for name, field in form.model_fields.items()]
-    near = difflib.get_close_matches(str(loc[-1]), keys, n=1)
-    return f"; did you mean {near[0]!r}?" if near else f"; known keys are {', '.join(keys)}"
+_TABLES: dict[str, type[Form]] = {"section": SectionForm, "terminal": TerminalForm, "places": _PlacesForm}
 
 
 # ---------------------------------------------------------------- faults between fields
@@ -282,7 +193,7 @@ def _value_faults(form: _CaseForm) -> Iterator[str]:
 
 def _impedance_faults(text: str, kind: str, index: int) -> Iterator[str]:
     try:
-        _positive(parse_quantity(text, IMPEDANCE_UNIT[kind]))
+        positive(parse_quantity(text, IMPEDANCE_UNIT[kind]))
     except ValueError as error:
         yield f"section {index}, impedance: {error}"
 
@@ -302,7 +213,7 @@ def _route(form: _CaseForm) -> Route:
     )
 
 
-def _terminal(table: _TerminalForm, folder: Path) -> Terminal:
+def _terminal(table: TerminalForm, folder: Path) -> Terminal:
     free = table.clock == "free"
     return Terminal(
         node=table.node,

@@ -7,19 +7,19 @@ import numpy as np
 
 from twlocate.arrays import ComplexArray, FloatArray
 from twlocate.errors import CaseError
+from twlocate.forms import IMPEDANCE_UNIT
 from twlocate.quantity import Quantity, parse_quantity
 from twlocate.simulation.events import fault_admittance, ramp, sinusoid, steady_state
 from twlocate.simulation.laplace import LaplaceGrid, laplace_grid
 from twlocate.simulation.media import constant_line
 from twlocate.simulation.network import Network, Shunt, Span, solve, through_into
 from twlocate.simulation.scenario import (
-    IMPEDANCE_UNIT,
     BurstForm,
     FaultForm,
     RecorderForm,
     Scenario,
-    SectionForm,
-    TerminalForm,
+    SimulatedSection,
+    SimulatedTerminal,
 )
 
 OVERSAMPLING = 2
@@ -117,7 +117,7 @@ def _network(scenario: Scenario, drawn: Drawn) -> Network:
     return Network(tuple(spans), shunts, held)
 
 
-def _modes(section: SectionForm, speed: float, scenario: Scenario) -> tuple[FloatArray, FloatArray]:
+def _modes(section: SimulatedSection, speed: float, scenario: Scenario) -> tuple[FloatArray, FloatArray]:
     z = parse_quantity(section.impedance, IMPEDANCE_UNIT[scenario.kind]).value
     if section.ground_speed is None or section.ground_impedance is None or scenario.phases == 1:
         return np.array([speed]), np.array([z])
@@ -165,7 +165,7 @@ class _Solved:
 
 
 def _terminal(
-    scenario: Scenario, terminal: TerminalForm, solved: _Solved, late_s: float, rng: np.random.Generator
+    scenario: Scenario, terminal: SimulatedTerminal, solved: _Solved, late_s: float, rng: np.random.Generator
 ) -> tuple[Trace, ...]:
     """Record every role of a terminal: what was, what the event adds, late by its clock and transducer."""
     grid, node, event = solved.grid, terminal.node, scenario.event

@@ -2,46 +2,36 @@
 
 import tomllib
 from pathlib import Path
-from typing import Annotated, Any, Literal
+from typing import Annotated, Literal
 
-from pydantic import BaseModel, BeforeValidator, ConfigDict, Field, ValidationError, model_validator
+from pydantic import Field, ValidationError, model_validator
 
 from twlocate.errors import CaseError
+from twlocate.forms import (
+    IMPEDANCE_UNIT,
+    ROLES,
+    Duration,
+    Form,
+    SectionForm,
+    TerminalForm,
+    form_faults,
+    quantity_in,
+)
 from twlocate.quantity import Quantity, parse_quantity
 from twlocate.simulation.events import FAULTS
 
-IMPEDANCE_UNIT = {"line": "ohm", "pipe": "Pa*s/m**3"}
 FEWEST_SAMPLES, MOST_SAMPLES = 64, 2_000_000
 """Of a recording."""
 
-ROLES = {"line": ("va", "vb", "vc", "ia", "ib", "ic", "v", "i"), "pipe": ("p", "q")}
 
-
-def _in(unit: str) -> Any:
-    def read(text: object) -> Quantity:
-        if not isinstance(text, str):
-            raise ValueError(f"{text!r} is not text; write a number with its unit in quotes, like '12.5 {unit}'")
-        return parse_quantity(text, unit)
-
-    return BeforeValidator(read)
-
-
-class _Form(BaseModel):
-    model_config = ConfigDict(extra="forbid", frozen=True, arbitrary_types_allowed=True)
-
-
-class SectionForm(_Form):
+class SimulatedSection(SectionForm):
     """A section as in a case file, and what only the simulator needs: loss, and the ground mode of three phases."""
 
-    from_node: str = Field(alias="from")
-    to_node: str = Field(alias="to")
-    length: Annotated[Quantity, _in("m")]
-    speed: Annotated[Quantity, _in("m/s")]
     impedance: str
-    loss_rate: Annotated[Quantity, _in("1/s")] = Quantity(0.0)
+    loss_rate: Annotated[Quantity, quantity_in("1/s")] = Quantity(0.0)
     """R/L of a line, f·|v|/D of a pipe."""
-    ground_speed: Annotated[Quantity | None, _in("m/s")] = None
-    ground_impedance: Annotated[Quantity | None, _in("ohm")] = None
+    ground_speed: Annotated[Quantity | None, quantity_in("m/s")] = None
+    ground_impedance: Annotated[Quantity | None, quantity_in("ohm")] = None
 
     @property
     def name(self) -> str:
@@ -49,58 +39,55 @@ class SectionForm(_Form):
         return f"{self.from_node}–{self.to_node}"
 
 
-class TerminalForm(_Form):
-    """A terminal as in a case file."""
+class SimulatedTerminal(TerminalForm):
+    """A terminal as in a case file; its clock is drawn from what the file states."""
 
-    node: str
     recording: str = Field(pattern=r"^[^/\\]+\.(cfg|csv)$")
-    channels: dict[str, str] = Field(min_length=1)
-    clock: Annotated[Quantity, _in("s")] = Quantity(0.0)
-    delay: Annotated[Quantity, _in("s")] = Quantity(0.0)
+    clock: Duration = Quantity(0.0)
 
 
-class EndForm(_Form):
+class EndForm(Form):
     """What hangs on a node: an impedance to the reference; 0 holds the node (a reservoir, a stiff source)."""
 
     node: str
     impedance: str
 
 
-class FaultForm(_Form):
+class FaultForm(Form):
     """A fault on a line."""
 
     kind: Literal["fault"]
     section: str
-    distance: Annotated[Quantity, _in("m")]
-    onset: Annotated[Quantity, _in("s")]
+    distance: Annotated[Quantity, quantity_in("m")]
+    onset: Annotated[Quantity, quantity_in("s")]
     type: str = "ag"
     """On three phases; on one conductor every fault is to ground."""
-    resistance: Annotated[Quantity, _in("ohm")]
-    voltage: Annotated[Quantity, _in("V")]
+    resistance: Annotated[Quantity, quantity_in("ohm")]
+    voltage: Annotated[Quantity, quantity_in("V")]
     """Peak, of the sources behind the ends, to ground."""
-    angle: Annotated[Quantity, _in("degree")] = Quantity(90.0)
+    angle: Annotated[Quantity, quantity_in("degree")] = Quantity(90.0)
     """Of phase a's source at the onset; 90° is its crest."""
-    frequency: Annotated[Quantity, _in("Hz")] = Quantity(50.0)
+    frequency: Annotated[Quantity, quantity_in("Hz")] = Quantity(50.0)
 
 
-class BurstForm(_Form):
+class BurstForm(Form):
     """A burst on a pipe: an outflow that grows from zero."""
 
     kind: Literal["burst"]
     section: str
-    distance: Annotated[Quantity, _in("m")]
-    onset: Annotated[Quantity, _in("s")]
-    outflow: Annotated[Quantity, _in("m**3/s")]
-    opening: Annotated[Quantity, _in("s")]
-    pressure: Annotated[Quantity, _in("Pa")] = Quantity(0.0)
+    distance: Annotated[Quantity, quantity_in("m")]
+    onset: Annotated[Quantity, quantity_in("s")]
+    outflow: Annotated[Quantity, quantity_in("m**3/s")]
+    opening: Annotated[Quantity, quantity_in("s")]
+    pressure: Annotated[Quantity, quantity_in("Pa")] = Quantity(0.0)
     """At all terminals before."""
 
 
-class RecorderForm(_Form):
+class RecorderForm(Form):
     """How the terminals record."""
 
-    rate: Annotated[Quantity, _in("Hz")]
-    duration: Annotated[Quantity, _in("s")]
+    rate: Annotated[Quantity, quantity_in("Hz")]
+    duration: Annotated[Quantity, quantity_in("s")]
     across_noise: float = Field(default=0.0, ge=0)
     """Standard deviation of white noise, V or Pa."""
     through_noise: float = Field(default=0.0, ge=0)
@@ -110,14 +97,14 @@ class RecorderForm(_Form):
     through_step: float = Field(default=0.0, ge=0)
 
 
-class Scenario(_Form):
+class Scenario(Form):
     """A scenario, checked; quantities in SI."""
 
     title: str = ""
     kind: Literal["line", "pipe"]
-    section: list[SectionForm] = Field(min_length=1)
-    terminal: list[TerminalForm] = Field(min_length=1)
-    end: list[EndForm] = []
+    section: list[SimulatedSection] = Field(min_length=1)
+    terminal: list[SimulatedTerminal] = Field(min_length=1)
+    end: list[EndForm] = Field(default_factory=list)
     event: FaultForm | BurstForm = Field(discriminator="kind")
     recorder: RecorderForm
 
@@ -148,8 +135,8 @@ class Scenario(_Form):
     def _section_faults(self) -> list[str]:
         faults = []
         for index, section in enumerate(self.section, 1):
-            if section.length.value <= 0 or section.speed.value <= 0:
-                faults.append(f"section {index}: length and speed must be above 0")
+            if section.flow_speed.value != 0:
+                faults.append(f"section {index}, flow_speed: the simulator knows no flow; leave it out")
             if section.loss_rate.value < 0:
                 faults.append(f"section {index}: loss_rate {section.loss_rate.value:g} 1/s is negative")
             if self.phases == 3 and (section.ground_speed is None or section.ground_impedance is None):
@@ -187,6 +174,11 @@ class Scenario(_Form):
         roles = [role for terminal in self.terminal for role in terminal.channels]
         one, three = (set(roles) & set(group) for group in (("v", "i"), ROLES["line"][:6]))
         faults = [
+            f"terminal {index}, launches: the simulator launches no pulses; leave it out"
+            for index, terminal in enumerate(self.terminal, 1)
+            if terminal.launches
+        ]
+        faults += [
             f"{table}: {name!r} is not a node; nodes are {', '.join(sorted(nodes))}"
             for table, name in named
             if name not in nodes
@@ -217,6 +209,16 @@ class Scenario(_Form):
         return faults
 
 
+_TABLES: dict[str, type[Form]] = {
+    "section": SimulatedSection,
+    "terminal": SimulatedTerminal,
+    "end": EndForm,
+    "fault": FaultForm,
+    "burst": BurstForm,
+    "recorder": RecorderForm,
+}
+
+
 def load_scenario(path: Path) -> Scenario:
     """Read a scenario file.
 
@@ -230,15 +232,8 @@ def load_scenario(path: Path) -> Scenario:
     except OSError as error:
         raise CaseError(f"{path}: {error.strerror or error}; give the path of a scenario file") from error
     except ValidationError as error:
-        raise CaseError("\n  ".join([f"{path}: the scenario is wrong", *_lines(error)])) from error
+        raise CaseError(
+            "\n  ".join([f"{path}: the scenario is wrong", *form_faults(error, Scenario, _TABLES)])
+        ) from error
     except ValueError as error:  # not UTF-8, or not TOML
         raise CaseError(f"{path}: not a TOML text file: {error}") from error
-
-
-def _lines(error: ValidationError) -> list[str]:
-    return [
-        f"{', '.join(str(part) for part in fault['loc'])}: {fault['msg'].removeprefix('Value error, ')}".removeprefix(
-            ": "
-        )
-        for fault in error.errors()
-    ]

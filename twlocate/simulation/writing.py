@@ -10,7 +10,7 @@ from typing import Any
 from twlocate.errors import CaseError
 from twlocate.records import Channel, Clock, Record, Stretch, write_comtrade
 from twlocate.simulation.running import Simulated, Trace
-from twlocate.simulation.scenario import RecorderForm, Scenario, TerminalForm
+from twlocate.simulation.scenario import RecorderForm, Scenario, SimulatedTerminal
 
 START_NS = 1_767_225_600_000_000_000
 """2026-01-01T00:00:00Z, for every scenario."""
@@ -76,7 +76,7 @@ def _toml(value: Any) -> str:
     return json.dumps(value, ensure_ascii=False)  # a JSON string is a TOML basic string
 
 
-def _write_comtrade(path: Path, terminal: TerminalForm, traces: tuple[Trace, ...], recorder: RecorderForm) -> None:
+def _write_comtrade(path: Path, terminal: SimulatedTerminal, traces: tuple[Trace, ...], recorder: RecorderForm) -> None:
     record = Record(
         path=path,
         format="",
@@ -92,14 +92,14 @@ def _write_comtrade(path: Path, terminal: TerminalForm, traces: tuple[Trace, ...
     write_comtrade(record, path, "BINARY32")
 
 
-def _channel(terminal: TerminalForm, trace: Trace, recorder: RecorderForm) -> Channel:
+def _channel(terminal: SimulatedTerminal, trace: Trace, recorder: RecorderForm) -> Channel:
     step = recorder.across_step if trace.role[0] in "vp" else recorder.through_step
     return Channel(
         terminal.channels[trace.role], UNITS[trace.role[0]], trace.samples, step=step or None, side="primary"
     )
 
 
-def _write_table(path: Path, terminal: TerminalForm, traces: tuple[Trace, ...], recorder: RecorderForm) -> None:
+def _write_table(path: Path, terminal: SimulatedTerminal, traces: tuple[Trace, ...], recorder: RecorderForm) -> None:
     head = [f"# rate: {recorder.rate.value:.12g} Hz", f"# start: {START_TEXT}"]
     names = ",".join(f"{terminal.channels[trace.role]} [{UNITS[trace.role[0]]}]" for trace in traces)
     rows = (",".join(f"{value:.9g}" for value in row) for row in zip(*(t.samples for t in traces), strict=True))
