@@ -8,6 +8,7 @@ import twlocate
 ROOMS = [
     "errors",
     "arrays",
+    "folders",
     "quantity",
     "scales",
     "records",
@@ -22,6 +23,7 @@ ROOMS = [
     "observing",
     "locating",
     "calibrating",
+    "validating",
     "reporting",
     "commands",
     "__main__",

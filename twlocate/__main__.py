@@ -8,6 +8,7 @@ from twlocate.commands.inspect import inspect
 from twlocate.commands.locate import locate
 from twlocate.commands.simulate import simulate
 from twlocate.commands.speed import speed
+from twlocate.commands.validate import validate
 
 # The matrices here are small: more threads cost more than they save, and with one the last bits of a sum do not
 # depend on the machine, so that the same inputs give the same bytes.
@@ -24,6 +25,7 @@ main.add_command(inspect)
 main.add_command(locate)
 main.add_command(simulate)
 main.add_command(speed)
+main.add_command(validate)
 
 if __name__ == "__main__":
     main()

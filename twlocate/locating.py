@@ -19,6 +19,14 @@ from twlocate.scales import time_scale, time_text
 TRANSIT_SIGMAS = 4.0
 """A difference of first arrivals may exceed the transit time by this many standard uncertainties."""
 
+EVENT_REFLECTS = {"line": 0.5, "pipe": 0.05}
+"""Prior probability that an echo is the event's own: a fault throws back much of a wave, a leak little (common
+practice, no source)."""
+
+ECHO_BLUR = 0.1
+"""Standard uncertainty of an echo's onset, as a share of its rise, for what terminals and other waves do to its shape
+(common practice, no source)."""
+
 FAINT_ECHO = 0.05
 """An echo of this share of the launched pulse is as likely the event's as not (common practice, no source)."""
 
@@ -135,7 +143,8 @@ def _readings(index: int, observation: Observation, zero_ns: int | None) -> list
 
 
 def _reading(index: int, offset_s: float, arrival: Arrival) -> Reading:
-    return Reading(index, offset_s + arrival.time_s, arrival.u_s, arrival.outlier, arrival.polarity)
+    blur_s = ECHO_BLUR * arrival.rise_s
+    return Reading(index, offset_s + arrival.time_s, arrival.u_s, arrival.outlier, arrival.polarity, blur_s)
 
 
 def _echo_reading(index: int, echo: Arrival, launched: Arrival) -> Reading:
@@ -221,7 +230,7 @@ def _estimate(
     if fatal:
         return None, "; ".join(fatal)
     try:
-        return estimate(case.route, stations, readings, coverage=coverage), ""
+        return estimate(case.route, stations, readings, coverage=coverage, again=EVENT_REFLECTS[case.kind]), ""
     except NoPosition as error:
         return None, str(error)
 

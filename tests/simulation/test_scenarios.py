@@ -201,7 +201,7 @@ def test_existing_folder_and_missing_scenario_are_refused(tmp_path):
     simulated(tmp_path, MAIN)
     again, _ = simulated(tmp_path, MAIN)
     assert again.exit_code == 2
-    assert "is there already; give a folder that does not exist yet" in again.stderr
+    assert "exists already; name a new folder" in again.stderr
     with pytest.raises(CaseError, match="give the path of a scenario file"):
         load_scenario(tmp_path / "none.toml")
 

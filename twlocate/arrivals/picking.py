@@ -19,7 +19,7 @@ LARGEST_REACH = 32
 WINDOW = 3
 """Samples used before and behind a front, in units of its reach."""
 
-TRUSTED_OUTLIER = 1e-3
+TRUSTED_OUTLIER = 1e-6
 DOUBTFUL_OUTLIER = 0.1
 """Outlier probability of a front far above, and just at, the threshold (common practice, no source)."""
 

@@ -23,9 +23,10 @@ def simulate(scenario: Path, out: Path, seed: int) -> None:
     import numpy as np
 
     from twlocate.case import load_case
+    from twlocate.folders import new_folder
     from twlocate.simulation.running import simulate as run
     from twlocate.simulation.scenario import load_scenario
-    from twlocate.simulation.writing import new_folder, write_simulated
+    from twlocate.simulation.writing import write_simulated
 
     with failing_in_one_line():
         checked = load_scenario(scenario)

@@ -76,6 +76,7 @@ def estimate(
     readings: Sequence[Reading],
     *,
     coverage: float = 0.95,
+    again: float = 0.5,
 ) -> Estimate:
     """Locate the event.
 
@@ -89,6 +90,9 @@ def estimate(
         Arrival times (s), those of a station in time order.
     coverage : float
         Probability that the band is to hold.
+    again : float
+        Prior probability that an echo at a station that listens is the event's own: a fault throws back much of a
+        wave, a leak little.
 
     Raises
     ------
@@ -96,7 +100,7 @@ def estimate(
         The readings do not single out a part of the route.
     """
     window_s = _window_s(route)
-    explanations = explain(route, stations, readings, window_s)
+    explanations = explain(route, stations, readings, window_s, again)
     models = [
         [linear_model(route, section, stations, readings, explanation) for section in range(len(route.sections))]
         for explanation in explanations

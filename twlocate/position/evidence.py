@@ -34,3 +34,5 @@ class Reading:
     """Probability that this is not a front of the event, so that its time says nothing."""
     polarity: int = 0
     """Sign of the front; 0 where it is not to be used."""
+    blur_s: float = 0.0
+    """Standard uncertainty to be added where the reading is taken for an echo of the first front."""

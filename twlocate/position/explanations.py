@@ -26,9 +26,9 @@ CLOCK_WRONG = 1e-3
 """Prior probability that a clock is off by far more than it states (common practice, no source)."""
 
 SMALLEST_OUTLIER = 1e-3
-"""No pick is trusted more than this, however clean it looks (common practice, no source)."""
+"""No station's picks are trusted more than this, however clean they look (common practice, no source)."""
 
-NEGLIGIBLE = 1e-9
+NEGLIGIBLE = 1e-12
 """Ways of taking a station's readings with a smaller prior are left out."""
 
 LATER_READINGS = 4
@@ -41,8 +41,8 @@ OTHER_WAVE = 0.5
 """Prior probability that a front behind the first is neither of the echoes that are looked for: a wave of another
 mode, of a neighbouring line, of a second event (common practice, no source)."""
 
-PRIOR_OF_ECHO = {"again": 0.5, "mirror": 0.5, "node": 0.3, "repeat": 0.2}
-"""Prior probability that a later front, being an echo, is of this kind (common practice, no source)."""
+PRIOR_OF_ECHO = {"node": 0.3, "repeat": 0.2}
+"""Prior probability that a front behind a launched pulse is this kind of echo (common practice, no source)."""
 
 SIGN_TRUSTED = 0.95
 """Probability that a front has the sign that its path predicts (common practice, no source)."""
@@ -58,6 +58,10 @@ class Cause:
 
     kind: str
     node: str = ""
+
+
+ECHOES = ("again", "mirror")
+"""Kinds of cause that are echoes at a station that listens."""
 
 
 @dataclass(frozen=True)
@@ -96,11 +100,18 @@ _PATHS = {
 }
 
 
-def parts_of(route: Route, stations: Sequence[Station], station: int, readings: Sequence[Reading]) -> tuple[Part, ...]:
-    """List the ways to take one station's readings."""
+def parts_of(
+    route: Route, stations: Sequence[Station], station: int, readings: Sequence[Reading], again: float
+) -> tuple[Part, ...]:
+    """List the ways to take one station's readings.
+
+    `again` is the prior probability that an echo at a station that listens is the event's own.
+    """
     own = [index for index, reading in enumerate(readings) if reading.station == station]
-    of_kind = _of_launch if stations[station].launches else _of_first_front
-    found = of_kind(route, stations, station, own, readings)
+    if stations[station].launches:
+        found = _of_launch(route, stations, station, own, readings)
+    else:
+        found = _of_first_front(route, stations, station, own, readings, again)
     return tuple(part for part in found if part.prior > NEGLIGIBLE)
 
 
@@ -112,27 +123,27 @@ def clock_states(stations: Sequence[Station]) -> tuple[tuple[frozenset[int], flo
     return (right, *((frozenset({station}), CLOCK_WRONG) for station in wrongable))
 
 
-def _outlier(reading: Reading) -> float:
-    return max(reading.outlier, SMALLEST_OUTLIER)
-
-
 def _least_doubtful(indices: Sequence[int], readings: Sequence[Reading]) -> list[int]:
     return sorted(sorted(indices, key=lambda index: readings[index].outlier)[:LATER_READINGS])
 
 
 def _of_first_front(
-    route: Route, stations: Sequence[Station], station: int, own: Sequence[int], readings: Sequence[Reading]
+    route: Route,
+    stations: Sequence[Station],
+    station: int,
+    own: Sequence[int],
+    readings: Sequence[Reading],
+    again: float,
 ) -> Iterator[Part]:
     """The first front is the n-th reading, those before it are strays, some behind it echoes; or all are strays."""
     earlier_wrong = 1.0
     for rank, index in enumerate(own[:FIRST_READINGS]):
-        wrong = _outlier(readings[index])
-        for echoes, prior in _echoes(
-            route, stations, station, index, _least_doubtful(own[rank + 1 :], readings), readings
-        ):
+        wrong = readings[index].outlier
+        later = _least_doubtful(own[rank + 1 :], readings)
+        for echoes, prior in _echoes(route, stations, station, index, later, readings, again):
             yield Part(((index, Cause("direct")), *echoes), earlier_wrong * (1 - wrong) * prior)
         earlier_wrong *= wrong
-    yield Part((), earlier_wrong)
+    yield Part((), max(earlier_wrong, SMALLEST_OUTLIER))
 
 
 def _echoes(
@@ -142,20 +153,18 @@ def _echoes(
     first: int,
     later: Sequence[int],
     readings: Sequence[Reading],
+    again: float,
 ) -> Iterator[tuple[tuple[tuple[int, Cause], ...], float]]:
     """Yield (echoes, prior) for every way to take the readings behind the first front `first`."""
     mirrors = [node for node in route.nodes if node != stations[station].node]
     signs = {s.node: s.reflects for s in stations}
-    causes = [(Cause("again"), 1.0, -signs[stations[station].node])]
-    causes += [(Cause("mirror", mirror), 1 / len(mirrors), signs.get(mirror, 0)) for mirror in mirrors]
+    causes = [(Cause("again"), again, -signs[stations[station].node])]
+    causes += [(Cause("mirror", mirror), (1 - again) / len(mirrors), signs.get(mirror, 0)) for mirror in mirrors]
     options = []
     for index in later:
-        other = max(_outlier(readings[index]), OTHER_WAVE)
+        other = max(readings[index].outlier, OTHER_WAVE)
         turn = readings[index].polarity * readings[first].polarity
-        weighed = [
-            (index, cause, (1 - other) * share * PRIOR_OF_ECHO[cause.kind] * _sign_weight(turn, sign))
-            for cause, share, sign in causes
-        ]
+        weighed = [(index, cause, (1 - other) * share * _sign_weight(turn, sign)) for cause, share, sign in causes]
         options.append([(index, None, other), *weighed])
     for picked in itertools.product(*options):
         echoes = tuple((index, cause) for index, cause, _ in picked if cause is not None)
@@ -183,17 +192,17 @@ def _of_launch(
     for echo in later:
         options = [list(_other_causes(index, echo, mirrors, readings)) for index in later if index != echo]
         for picked in itertools.product(*options):
-            prior = (1 - _outlier(readings[echo])) * math.prod(weight for _, _, weight in picked)
+            prior = (1 - max(readings[echo].outlier, SMALLEST_OUTLIER)) * math.prod(weight for _, _, weight in picked)
             causes = tuple((index, cause) for index, cause, _ in picked if cause is not None)
             if _once_each(causes):
                 yield Part((launch, (echo, Cause("echo")), *causes), prior / len(later))
-    yield Part((launch,), math.prod(_outlier(readings[index]) for index in later))
+    yield Part((launch,), math.prod(max(readings[index].outlier, SMALLEST_OUTLIER) for index in later))
 
 
 def _other_causes(
     index: int, echo: int, mirrors: Sequence[str], readings: Sequence[Reading]
 ) -> Iterator[tuple[int, Cause | None, float]]:
-    wrong = _outlier(readings[index])
+    wrong = max(readings[index].outlier, SMALLEST_OUTLIER)
     for mirror in mirrors:
         yield index, Cause("node", mirror), (1 - wrong) * PRIOR_OF_ECHO["node"] / len(mirrors)
     if index > echo:

@@ -17,7 +17,7 @@ import numpy as np
 
 from twlocate.arrays import FloatArray
 from twlocate.position.evidence import Reading, Station
-from twlocate.position.explanations import Explanation, path_of
+from twlocate.position.explanations import ECHOES, Cause, Explanation, path_of
 from twlocate.position.inputs import columns, input_variances
 from twlocate.routes import Route, travel_time
 
@@ -127,10 +127,17 @@ def linear_model(
         at_zero=np.array([at_zero for at_zero, _ in partials]).reshape(-1, n_inputs),
         slope=np.array([slope for _, slope in partials]).reshape(-1, n_inputs),
         flat=_flat_columns(rows, stations, explanation),
-        variance=np.array([row.u_s**2 for row in rows]),
+        variance=np.array(
+            [time_variance(row, cause) for row, (_, cause) in zip(rows, explanation.causes, strict=True)]
+        ),
         input_variance=input_variances(route, stations),
         n_strays=len(readings) - len(rows),
     )
+
+
+def time_variance(reading: Reading, cause: Cause) -> float:
+    """Return the variance of a reading's time, s²; an echo is reshaped on its way and rides on other waves."""
+    return reading.u_s**2 + (reading.blur_s**2 if cause.kind in ECHOES else 0.0)
 
 
 def _known_lag(station: Station) -> float:

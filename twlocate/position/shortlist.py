@@ -17,7 +17,7 @@ from twlocate.arrays import FloatArray
 from twlocate.position.evidence import Reading, Station
 from twlocate.position.explanations import Cause, Explanation, Part, clock_states, parts_of, path_of
 from twlocate.position.inputs import input_variances
-from twlocate.position.linear import linear_model
+from twlocate.position.linear import linear_model, time_variance
 from twlocate.routes import Route, TravelTime, travel_time
 
 PLACES_A_SECTION = 193
@@ -50,6 +50,7 @@ class _Scoring:
     stations: Sequence[Station]
     readings: Sequence[Reading]
     window_s: float
+    again: float
     grids: tuple[_Places, ...]
 
 
@@ -74,14 +75,15 @@ class _Ways:
 
 
 def explain(
-    route: Route, stations: Sequence[Station], readings: Sequence[Reading], window_s: float
+    route: Route, stations: Sequence[Station], readings: Sequence[Reading], window_s: float, again: float
 ) -> tuple[Explanation, ...]:
     """Return the explanations worth weighing, best first.
 
-    `window_s` is the span over which a stray reading may lie.
+    `window_s` is the span over which a stray reading may lie, `again` the prior probability that an echo is the
+    event's own.
     """
     grids = tuple(_places(index, section.length.value) for index, section in enumerate(route.sections))
-    scoring = _Scoring(route, stations, readings, window_s, grids)
+    scoring = _Scoring(route, stations, readings, window_s, again, grids)
     choices = [_ways_by_first(scoring, station) for station in range(len(stations))]
     found: dict[tuple[Part, ...], dict[frozenset[int], float]] = {}
     scored = sorted(_states(scoring, choices), key=lambda state: -float(state[2].max()))
@@ -141,7 +143,7 @@ def _ways_by_first(scoring: _Scoring, station: int) -> list[_Ways]:
     total = sum(reading.station == station for reading in scoring.readings)
     intervals: dict[tuple[int, int, Cause], FloatArray] = {}
     groups: dict[tuple[tuple[int, Cause], ...], list[tuple[Part, FloatArray]]] = {}
-    for part in parts_of(scoring.route, scoring.stations, station, scoring.readings):
+    for part in parts_of(scoring.route, scoring.stations, station, scoring.readings, scoring.again):
         strays = total - len(part.causes)
         level = float(np.log(part.prior)) - strays * float(np.log(scoring.window_s))
         score = np.full(sum(grid.x.size for grid in scoring.grids), level)
@@ -164,7 +166,7 @@ def _interval_score(scoring: _Scoring, first: tuple[int, Cause], echo: tuple[int
     """Return the log density of the time between a first front and its echo at every place, blurred by the grid."""
     one, other = scoring.readings[first[0]], scoring.readings[echo[0]]
     measured = other.time_s - one.time_s
-    u_readings = one.u_s**2 + other.u_s**2
+    u_readings = one.u_s**2 + time_variance(other, echo[1])
     variances = input_variances(scoring.route, scoring.stations)[: 3 * len(scoring.route.sections)]
     pieces = []
     for grid in scoring.grids:

@@ -1,13 +1,9 @@
 """Write what was simulated: recordings, the truth, and a case file that is ready to be located."""
 
-import contextlib
 import json
-import tempfile
-from collections.abc import Iterator
 from pathlib import Path
 from typing import Any
 
-from twlocate.errors import CaseError
 from twlocate.records import Channel, Clock, Record, Stretch, write_comtrade
 from twlocate.simulation.running import Simulated, Trace
 from twlocate.simulation.scenario import RecorderForm, Scenario, SimulatedTerminal
@@ -31,28 +27,6 @@ def write_simulated(scenario: Scenario, tables: dict[str, Any], simulated: Simul
     case = folder / "case.toml"
     case.write_text(case_text(tables), encoding="utf-8")
     return case
-
-
-@contextlib.contextmanager
-def new_folder(folder: Path) -> Iterator[Path]:
-    """Give a folder to write into that becomes `folder` when all went well, and leaves nothing when not.
-
-    Raises
-    ------
-    CaseError
-        `folder` is there already, or cannot be made.
-    """
-    if folder.exists():
-        raise CaseError(f"{folder}: is there already; give a folder that does not exist yet")
-    try:
-        folder.parent.mkdir(parents=True, exist_ok=True)
-        with tempfile.TemporaryDirectory(dir=folder.parent) as name:
-            unfinished = Path(name) / "unfinished"
-            unfinished.mkdir()
-            yield unfinished
-            unfinished.rename(folder)
-    except OSError as error:
-        raise CaseError(f"{folder}: {error.strerror or error}; give a folder that can be written") from error
 
 
 def case_text(tables: dict[str, Any]) -> str:
