@@ -135,8 +135,10 @@ def test_e8_three_terminals():
     pair = estimate(
         route, [stations[0], stations[2]], [Reading(0, times[0] * MICRO, 1e-8), Reading(1, times[2] * MICRO, 1e-8)]
     )
-    node_distance = {0: 80e3, 1: 50e3, 2: 30e3}[pair.point.section]
-    assert pair.point.distance_m == pytest.approx(node_distance, abs=1.0)  # A and C alone point to the tee
+    # A and C alone point to the tee, which is to say: anywhere beyond it (a uniform density: mean L/2, u = L/√12)
+    assert (pair.point.section, pair.point.distance_m) == (1, pytest.approx(25e3, rel=1e-3))
+    assert pair.point.u_m == pytest.approx(50e3 / 12**0.5, rel=1e-3)
+    assert pair.in_one_run
 
 
 def pipe(length, speed, flow):

@@ -24,6 +24,16 @@ class SectionDensity:
         """Probability that the event is in this section."""
         return float(np.trapezoid(self.density, self.x))
 
+    @property
+    def mode(self) -> float:
+        """Where the density is highest, m."""
+        return float(self.x[self.density.argmax()])
+
+    def moments(self) -> tuple[float, float]:
+        """Return mean and standard deviation of the density within this section, m."""
+        mean = float(np.trapezoid(self.density * self.x, self.x)) / self.mass
+        return mean, (float(np.trapezoid(self.density * (self.x - mean) ** 2, self.x)) / self.mass) ** 0.5
+
     def between(self, low_m: float, high_m: float) -> float:
         """Probability that the event is between two distances on this section."""
         steps = np.diff(self.x) * (self.density[:-1] + self.density[1:]) / 2

@@ -32,11 +32,13 @@ def budget(
 
     The position is the weighted least squares solution x̂ = x + mᵀW·r / (mᵀW·m). An input that is larger
     than stated shifts the predictions by its column of J, hence the position by −mᵀW·J / (mᵀW·m).
+    Where the times do not depend on x there is no such solution, and no contribution.
     """
-    here = np.array([x])
-    pull = model.weights(here)[0][0] @ model.per_metre
-    gain = pull / (pull @ model.per_metre)
-    of_inputs = -gain @ model.jacobian(here)[0]
+    pull, curvature = model.pull(x)
+    if curvature <= 0:
+        return ()
+    gain = pull @ model.differences / curvature
+    of_inputs = -gain @ model.jacobian(np.array([x]))[0]
     rows = [
         Contribution(source.name, source.unit, source.u, float(sensitivity))
         for source, sensitivity in zip(inputs, of_inputs, strict=True)

@@ -19,6 +19,9 @@ from twlocate.routes import Route
 COARSE_POINTS = 129
 """Grid points a section before it is refined."""
 
+FINEST_GRID = 1e-9
+"""Closest grid, as a share of the section, so that neighbouring points differ in their last digits."""
+
 FINE_STEPS = np.linspace(-8.0, 8.0, 129)
 """Where the grid is refined around each peak, in standard uncertainties."""
 
@@ -98,7 +101,10 @@ def estimate(
     ------
     NoPosition
         The readings do not single out a part of the route.
+    ValueError
+        A reading's time or uncertainty is not a finite number, or the uncertainty is not positive.
     """
+    _check(readings)
     window_s = _window_s(route)
     explanations = explain(route, stations, readings, window_s, again)
     models = [
@@ -128,6 +134,15 @@ def estimate(
     )
 
 
+def _check(readings: Sequence[Reading]) -> None:
+    for index, reading in enumerate(readings):
+        if not (np.isfinite(reading.time_s) and 0 < reading.u_s < np.inf):
+            raise ValueError(
+                f"reading {index}: {reading.time_s:g} s with the standard uncertainty {reading.u_s:g} s is no arrival "
+                "time; give a finite time and an uncertainty above 0"
+            )
+
+
 # ---------------------------------------------------------------- the grid and the density on it
 
 
@@ -154,7 +169,7 @@ def _own_grid(model: LinearModel, length_m: float) -> FloatArray:
     if not model.informative:
         return points
     peak, u = model.best_x(length_m)
-    fine = peak + u * FINE_STEPS
+    fine = peak + max(u, FINEST_GRID * length_m) * FINE_STEPS
     return np.unique(np.concatenate([points, fine[(fine >= 0.0) & (fine <= length_m)]]))
 
 
@@ -216,12 +231,22 @@ def _alternatives(
 
 
 def _peak(densities: Sequence[SectionDensity], models: Sequence[LinearModel | None]) -> Point:
-    section = max(range(len(densities)), key=lambda index: densities[index].density.max())
-    x = float(densities[section].x[densities[section].density.argmax()])
-    model = _possible(models[section])
-    weights = model.weights(np.array([x]))[0][0]
-    curvature = float(model.per_metre @ weights @ model.per_metre)
-    return Point(section, x, curvature**-0.5)
+    """Return the highest point of the density; where most of it lies on a plateau, the middle of that."""
+    likeliest = max(range(len(densities)), key=lambda index: densities[index].mass)
+    if _u_of_peak(densities[likeliest], models[likeliest]) is None:
+        return Point(likeliest, *densities[likeliest].moments())
+    peaks = {s: u for s, row in enumerate(densities) if (u := _u_of_peak(row, models[s])) is not None}
+    section = max(peaks, key=lambda index: densities[index].density.max())
+    return Point(section, densities[section].mode, peaks[section])
+
+
+def _u_of_peak(density: SectionDensity, model: LinearModel | None) -> float | None:
+    """Return the standard uncertainty of a section's peak, m; None where it would be wider than the section."""
+    if model is None or density.mass == 0:
+        return None
+    curvature = model.pull(density.mode)[1]
+    length = float(density.x[-1])
+    return curvature**-0.5 if curvature * length**2 > 1 else None
 
 
 def _attribution(
@@ -250,12 +275,7 @@ def _fits(
 
     The residual is shared out between the inputs and the reading in proportion to their variances.
     """
-    here = np.array([point.distance_m])
-    residual = model.residual(here)[0]
-    inverse = np.linalg.inv(model.covariance(here)[0])
-    flat = model.flat
-    adjusted = residual - flat @ np.linalg.solve(flat.T @ inverse @ flat, flat.T @ inverse @ residual)
-    left = model.variance * (inverse @ adjusted)
+    left = model.left_over(point.distance_m)
     return {
         index: Fit(_path_name(route, stations, readings[index], cause, point.section), float(rest))
         for (index, cause), rest in zip(explanation.causes, left, strict=True)

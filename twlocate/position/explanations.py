@@ -20,6 +20,7 @@ from twlocate.routes import (
     mirror_path,
     node_echo_path,
     repeated_echo_path,
+    transit_s,
 )
 
 CLOCK_WRONG = 1e-3
@@ -46,6 +47,10 @@ PRIOR_OF_ECHO = {"node": 0.3, "repeat": 0.2}
 
 SIGN_TRUSTED = 0.95
 """Probability that a front has the sign that its path predicts (common practice, no source)."""
+
+
+MIRROR_SIGMAS = 8.0
+"""A reading further than this from when a node's echo is due is not weighed as that echo: exp(−8²/2) is nothing."""
 
 
 @dataclass(frozen=True)
@@ -188,9 +193,14 @@ def _of_launch(
         return
     launch = (own[0], Cause("launch"))
     later = _least_doubtful(own[1:], readings)
-    mirrors = [node for node in route.nodes if node != stations[station].node]
+    home = stations[station]
+    mirrors = {
+        index: [node for node in route.nodes if _may_be_echo_of(node, route, home, readings[own[0]], readings[index])]
+        for index in later
+    }
     for echo in later:
-        options = [list(_other_causes(index, echo, mirrors, readings)) for index in later if index != echo]
+        others = [index for index in later if index != echo]
+        options = [list(_other_causes(index, echo, mirrors[index], len(route.nodes) - 1, readings)) for index in others]
         for picked in itertools.product(*options):
             prior = (1 - max(readings[echo].outlier, SMALLEST_OUTLIER)) * math.prod(weight for _, _, weight in picked)
             causes = tuple((index, cause) for index, cause, _ in picked if cause is not None)
@@ -199,12 +209,21 @@ def _of_launch(
     yield Part((launch,), math.prod(max(readings[index].outlier, SMALLEST_OUTLIER) for index in later))
 
 
+def _may_be_echo_of(node: str, route: Route, station: Station, launch: Reading, reading: Reading) -> bool:
+    """Whether a reading comes about when the echo of a node is due, which does not depend on where the event is."""
+    if node == station.node:
+        return False
+    there, back = transit_s(route, station.node, node), transit_s(route, node, station.node)
+    u = ((there.u + back.u) ** 2 + launch.u_s**2 + reading.u_s**2) ** 0.5
+    return bool(abs(reading.time_s - launch.time_s - there.value - back.value) <= MIRROR_SIGMAS * u)
+
+
 def _other_causes(
-    index: int, echo: int, mirrors: Sequence[str], readings: Sequence[Reading]
+    index: int, echo: int, mirrors: Sequence[str], n_mirrors: int, readings: Sequence[Reading]
 ) -> Iterator[tuple[int, Cause | None, float]]:
     wrong = max(readings[index].outlier, SMALLEST_OUTLIER)
     for mirror in mirrors:
-        yield index, Cause("node", mirror), (1 - wrong) * PRIOR_OF_ECHO["node"] / len(mirrors)
+        yield index, Cause("node", mirror), (1 - wrong) * PRIOR_OF_ECHO["node"] / n_mirrors
     if index > echo:
         yield index, Cause("repeat"), (1 - wrong) * PRIOR_OF_ECHO["repeat"]
     yield index, None, wrong
