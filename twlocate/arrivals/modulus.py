@@ -18,6 +18,8 @@ TINY = 1e-300
 SILENT_SHARE = 0.5
 """Of the converter step, where the noise is too small to spread the rounding: one step up and back is then no front."""
 
+STANDS_OUT = 4.0
+
 MEDIAN_OF_NORMAL = 0.6744897501960817
 """The median of |z| for a standard normal z."""
 
@@ -43,10 +45,17 @@ def haar_coefficients(samples: FloatArray, scale: int) -> FloatArray:
 
 
 def robust_sigma(values: FloatArray, least: float = 0.0) -> float:
-    """Return the standard deviation of normal noise with the same median modulus, at least `least`."""
+    """Return the standard deviation of the values less those that stand out of normal noise, at least `least`.
+
+    What stands out is more than `STANDS_OUT` times what the median modulus tells; the median alone is coarse where
+    readings are few converter steps high.
+    """
     if values.size == 0:
         return least
-    return max(float(np.median(np.abs(values))) / MEDIAN_OF_NORMAL, least)
+    size = np.abs(values)
+    rough = float(np.median(size)) / MEDIAN_OF_NORMAL
+    inside = size[size <= STANDS_OUT * rough]
+    return max(float(np.sqrt(np.mean(inside**2))), least)
 
 
 def without_trend(coefficients: FloatArray, scale: int) -> FloatArray:

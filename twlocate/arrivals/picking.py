@@ -49,15 +49,16 @@ def pick(trace: Trace, *, false_alarm: float = 1e-3, most: int = 8) -> Picks:
     samples = as_signal(trace.samples, trace.name or "trace")
     trace = replace(trace, step=max(trace.step, _finest_step(samples)))
     samples = _hum_off(samples, trace, false_alarm)
-    first, quiet = first_front(samples, trace.step, false_alarm)
+    look = first_front(samples, trace.step, false_alarm)
+    first, quiet = look.front, look.quiet
     gates = [_quiet_gate(first, quiet)]
     if first is None or quiet < FEWEST_QUIET:
         return Picks(trace, samples, samples, 0.0, (), tuple(gates))
     noise = measure_noise(samples[:quiet], trace.step)
     denoised = shrink(samples, quiet)
-    sigma = robust_sigma(haar_coefficients(samples, first.scale)[first.scale : quiet], trace.step / np.sqrt(12))
+    sigma = robust_sigma(haar_coefficients(samples, look.scale)[look.scale : quiet], trace.step / np.sqrt(12))
     limit = threshold(false_alarm, samples.size, 1)
-    candidates = [first, *later_fronts(denoised, first, sigma, limit, most - 1)]
+    candidates = [first, *later_fronts(denoised, first, look.scale, sigma, limit, most - 1)]
     fronts = [_time(samples, candidates, index, quiet, noise, trace.step) for index in range(len(candidates))]
     arrivals = tuple(
         _arrival(trace, front, candidate, noise) for front, candidate in zip(fronts, candidates, strict=True)
@@ -75,8 +76,8 @@ def _hum_off(samples: FloatArray, trace: Trace, false_alarm: float) -> FloatArra
     """Subtract the power frequency, as far as a first look at the fine scales tells what precedes the event."""
     if trace.line_frequency_hz is None:
         return samples
-    candidate, quiet = first_front(samples, trace.step, false_alarm)
-    before = quiet if candidate is None else max(candidate.sample - 4 * candidate.scale, 0)
+    look = first_front(samples, trace.step, false_alarm)
+    before = look.quiet if look.front is None else max(look.front.sample - 4 * look.front.scale, 0)
     return without_hum(samples, trace.rate_hz, trace.line_frequency_hz, before)
 
 
