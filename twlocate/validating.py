@@ -151,9 +151,7 @@ class Ledger:
             else:
                 path.write_text(json.dumps(head) + "\n", encoding="utf-8")
         except (OSError, ValueError, TypeError, KeyError) as error:
-            raise CaseError(
-                f"{path}: no record of a validation that can be gone on with ({error}); name another"
-            ) from error
+            raise CaseError(f"{path}: no record of this validation to go on from ({error}); name another") from error
 
     def _take_over(self, path: Path, head: dict[str, Any]) -> None:
         first, *rows = path.read_text(encoding="utf-8").splitlines()
