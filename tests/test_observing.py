@@ -144,8 +144,6 @@ def without_start(path):
 def test_a_start_at_one_end_only_leaves_the_other_clock_free(main):
     without_start(main.parent / "ridge-chamber.csv")
     finding = locate(load_case(main))
-    assert finding.estimate is None
-    assert "clock of Ridge chamber is free" in finding.reason
     gate = next(gate for gate in finding.checks if gate.name == "Ridge chamber: clock")
     assert (gate.passed, gate.detail) == (
         False,

@@ -26,7 +26,7 @@ def test_help_loads_no_numeric_library():
 
 
 def test_help_of_each_command_loads_no_numeric_library():
-    for command in ("locate", "inspect"):
+    for command in ("locate", "inspect", "simulate", "speed"):
         assert not loaded_by(command, "--help") & set(HEAVY)
 
 

@@ -1,9 +1,10 @@
-"""The array type and the one gatekeeper that numeric functions use at their public door."""
+"""The array types and the one gatekeeper that numeric functions use at their public door."""
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 FloatArray = NDArray[np.float64]
+ComplexArray = NDArray[np.complex128]
 
 
 def as_signal(values: ArrayLike, name: str) -> FloatArray:

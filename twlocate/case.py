@@ -1,29 +1,34 @@
 """The case file: what the route is, where the recordings are, how far the clocks may be trusted (README)."""
 
 import csv
-import difflib
 import math
 import tomllib
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
 from pathlib import Path
-from typing import Annotated, Any, Literal
+from typing import Any, Literal
 
-from pydantic import AfterValidator, BaseModel, BeforeValidator, ConfigDict, Field, ValidationError
+from pydantic import Field, ValidationError
 
 from twlocate.errors import CaseError
+from twlocate.forms import (
+    IMPEDANCE_UNIT,
+    ROLES,
+    Form,
+    SectionForm,
+    TerminalForm,
+    Words,
+    form_faults,
+    positive,
+    printable,
+)
 from twlocate.quantity import Quantity, parse_quantity
 from twlocate.routes import Place, Route, Section
 
 SPEED_OF_LIGHT = 299_792_458.0  # m/s, exact: SI definition of the metre
 
-ROLES = {
-    "line": ("va", "vb", "vc", "ia", "ib", "ic", "v", "i"),
-    "pipe": ("p", "q"),
-}
-"""What a channel can be, by kind of route: phase voltages and currents, one voltage or current; pressure, flow."""
-
-IMPEDANCE_UNIT = {"line": "ohm", "pipe": "Pa*s/m**3"}
+REFLECTS = {"low impedance": -1, None: 0, "high impedance": 1}
+"""Sign of the reflection of voltage or pressure at a terminal, by what its bus is against the line or pipe."""
 
 SPEEDS = {"line": (0.1 * SPEED_OF_LIGHT, SPEED_OF_LIGHT), "pipe": (10.0, 1e4)}
 """m/s. A line at a tenth of the speed of light would need a relative permittivity of 100; bubbly water and soft hoses
@@ -55,12 +60,14 @@ class Terminal:
     node: str
     recording: Path
     channels: Mapping[str, str]
-    """Role (see :data:`ROLES`) to the channel's name in the recording."""
+    """Role (see :data:`~twlocate.forms.ROLES`) to the channel's name in the recording."""
     clock: Quantity | None
     """Offset and standard uncertainty of its clock, s; None: take what the recording says."""
     clock_free: bool
     delay: Quantity
     """Transducer and secondary cabling, s."""
+    reflects: int
+    """Sign of what its bus makes of an arriving voltage or pressure wave: −1, +1, or 0 where that is not stated."""
     launches: str | None
     """``pulse`` or ``step`` where the terminal sends its own signal into the route; None where it only listens."""
 
@@ -91,7 +98,7 @@ def load_case(path: Path) -> Case:
     try:
         form = _CaseForm.model_validate(tables)
     except ValidationError as error:
-        raise _case_error(path, [*_form_faults(error), *faults]) from error
+        raise _case_error(path, [*form_faults(error, _CaseForm, _TABLES), *faults]) from error
     faults = faults or [*_value_faults(form)]
     if faults:
         raise _case_error(path, faults)
@@ -124,124 +131,22 @@ def _read_toml(path: Path) -> dict[str, Any]:
         ) from error
 
 
-# ---------------------------------------------------------------- the form: one field at a time
+# ---------------------------------------------------------------- the form
 
 
-def _quantity_in(unit: str) -> Any:
-    def read(text: object) -> Quantity:
-        if not isinstance(text, str):
-            raise ValueError(f"{text!r} is not text; write a number with its unit in quotes, like '12.5 {unit}'")
-        return parse_quantity(text, unit)
-
-    return BeforeValidator(read)
-
-
-def _positive(quantity: Quantity) -> Quantity:
-    if quantity.value <= 0:
-        raise ValueError(f"{quantity.value:g} (SI) is not positive")
-    return quantity
-
-
-Length = Annotated[Quantity, AfterValidator(_positive), _quantity_in("m")]
-Speed = Annotated[Quantity, AfterValidator(_positive), _quantity_in("m/s")]
-Flow = Annotated[Quantity, _quantity_in("m/s")]
-Duration = Annotated[Quantity, _quantity_in("s")]
-
-
-def _clock(text: object) -> object:
-    if isinstance(text, str) and text.strip().lower() == "free":
-        return "free"
-    return _quantity_in("s").func(text)
-
-
-class _Form(BaseModel):
-    model_config = ConfigDict(extra="forbid", frozen=True, arbitrary_types_allowed=True)
-
-
-def _printable(text: str) -> str:
-    if not text.isprintable():
-        raise ValueError(f"{text!r} holds a character that cannot be printed; leave it out")
-    return text
-
-
-Name = Annotated[str, Field(min_length=1), AfterValidator(_printable)]
-
-
-class _SectionForm(_Form):
-    from_node: Name = Field(alias="from")
-    to_node: Name = Field(alias="to")
-    length: Length
-    speed: Speed
-    impedance: str | None = None
-    flow_speed: Flow = Quantity(0.0)
-
-
-class _TerminalForm(_Form):
-    node: str
-    recording: str
-    channels: dict[str, str] = Field(min_length=1)
-    clock: Annotated[Quantity | Literal["free"] | None, BeforeValidator(_clock)] = None
-    delay: Duration = Quantity(0.0)
-    launches: Literal["pulse", "step"] | None = None
-
-
-class _PlacesForm(_Form):
+class _PlacesForm(Form):
     file: str
 
 
-class _CaseForm(_Form):
-    title: Annotated[str, AfterValidator(_printable)] = ""
+class _CaseForm(Form):
+    title: Words = ""
     kind: Literal["line", "pipe"]
-    section: list[_SectionForm] = Field(min_length=1)
-    terminal: list[_TerminalForm] = Field(min_length=1)
+    section: list[SectionForm] = Field(min_length=1)
+    terminal: list[TerminalForm] = Field(min_length=1)
     places: _PlacesForm | None = None
 
 
-def _form_faults(error: ValidationError) -> Iterator[str]:
-    for fault in error.errors():
-        place = _place(fault["loc"])
-        if fault["type"] == "extra_forbidden":
-            yield f"{place}: unknown key{_suggestion(fault['loc'])}"
-        elif fault["type"] == "missing":
-            yield f"{place}: missing; every {_owner(fault['loc'])} needs it"
-        else:
-            yield f"{place}: {_WORDS.get(fault['type'], fault['msg'].removeprefix('Value error, '))}"
-
-
-_WORDS = {
-    "string_type": "not text; write it in quotes",
-    "string_too_short": "empty; give it a name",
-    "too_short": "empty; at least one entry is needed",
-    "list_type": "not a list of tables; write it with two brackets, like [[section]]",
-    "model_type": "not a table of keys and values",
-    "dict_type": 'not a table; write it like { v = "name of the channel" }',
-}
-"""What the usual types of fault are called here."""
-
-
-def _place(loc: tuple[int | str, ...]) -> str:
-    """Turn ("section", 0, "length") into "section 1, length" (counted as in the file, from one)."""
-    words: list[str] = []
-    for part in loc:
-        if isinstance(part, int):
-            words[-1] += f" {part + 1}"
-        else:
-            words.append(part)
-    return ", ".join(words)
-
-
-_FORMS: dict[str, type[_Form]] = {"section": _SectionForm, "terminal": _TerminalForm, "places": _PlacesForm}
-
-
-def _owner(loc: tuple[int | str, ...]) -> str:
-    return {"places": "places table"}.get(str(loc[0]), str(loc[0])) if len(loc) > 1 else "case file"
-
-
-def _suggestion(loc: tuple[int | str, ...]) -> str:
-    form = _FORMS.get(str(loc[0]), _CaseForm) if len(loc) > 1 else _CaseForm
-    keys = [field.alias or name for name, field in form.model_fields.items()]
-    near = difflib.get_close_matches(str(loc[-1]), keys, n=1)
-    return f"; did you mean {near[0]!r}?" if near else f"; known keys are {', '.join(keys)}"
+_TABLES: dict[str, type[Form]] = {"section": SectionForm, "terminal": TerminalForm, "places": _PlacesForm}
 
 
 # ---------------------------------------------------------------- faults between fields
@@ -349,13 +254,13 @@ def _value_faults(form: _CaseForm) -> Iterator[str]:
             yield from _impedance_faults(section.impedance, form.kind, index)
 
 
-def _length_faults(section: _SectionForm) -> Iterator[str]:
+def _length_faults(section: SectionForm) -> Iterator[str]:
     if section.length.value > LONGEST_M:
         yield f"length: {section.length.value:g} m is longer than the equator; check the unit"
     yield from _vague("length", section.length, "m")
 
 
-def _speed_faults(section: _SectionForm, kind: str) -> Iterator[str]:
+def _speed_faults(section: SectionForm, kind: str) -> Iterator[str]:
     low, high = SPEEDS[kind]
     speed = section.speed
     if kind == "line" and speed.value > SPEED_OF_LIGHT:
@@ -365,7 +270,7 @@ def _speed_faults(section: _SectionForm, kind: str) -> Iterator[str]:
     yield from _vague("speed", speed, "m/s")
 
 
-def _flow_faults(section: _SectionForm, kind: str) -> Iterator[str]:
+def _flow_faults(section: SectionForm, kind: str) -> Iterator[str]:
     flow, speed = section.flow_speed, section.speed
     if kind == "line" and flow != Quantity(0.0):
         yield "flow_speed: only a pipe has a flow; leave it out on a line"
@@ -387,7 +292,7 @@ def _vague(what: str, quantity: Quantity, unit: str) -> Iterator[str]:
 def _impedance_faults(text: str, kind: str, index: int) -> Iterator[str]:
     low, high = IMPEDANCES[kind]
     try:
-        value = _positive(parse_quantity(text, IMPEDANCE_UNIT[kind])).value
+        value = positive(parse_quantity(text, IMPEDANCE_UNIT[kind])).value
     except ValueError as error:
         yield f"section {index}, impedance: {error}"
         return
@@ -413,7 +318,7 @@ def _route(form: _CaseForm) -> Route:
     )
 
 
-def _terminal(table: _TerminalForm, folder: Path) -> Terminal:
+def _terminal(table: TerminalForm, folder: Path) -> Terminal:
     free = table.clock == "free"
     return Terminal(
         node=table.node,
@@ -422,6 +327,7 @@ def _terminal(table: _TerminalForm, folder: Path) -> Terminal:
         clock=table.clock if isinstance(table.clock, Quantity) else None,
         clock_free=free,
         delay=table.delay,
+        reflects=REFLECTS[table.bus],
         launches=table.launches,
     )
 
@@ -469,7 +375,7 @@ def _place_of(row: dict[str, str | None], sections: dict[str, int], route: Route
     if not 0 <= distance <= length:
         raise ValueError(f"chainage {row['chainage']} is not on the section, which is {length:g} m long")
     lat, lon = (_degrees(row.get(key), key, limit) for key, limit in (("lat", 90.0), ("lon", 180.0)))
-    return Place(_printable(row["name"] or ""), section, distance, lat, lon)
+    return Place(printable(row["name"] or ""), section, distance, lat, lon)
 
 
 def _degrees(text: str | None, key: str, limit: float) -> float | None:

@@ -19,6 +19,14 @@ from twlocate.scales import time_scale, time_text
 TRANSIT_SIGMAS = 4.0
 """A difference of first arrivals may exceed the transit time by this many standard uncertainties."""
 
+EVENT_REFLECTS = {"line": 0.5, "pipe": 0.05}
+"""Prior probability that an echo is the event's own: a fault throws back much of a wave, a leak little (common
+practice, no source)."""
+
+ECHO_BLUR = 0.1
+"""Standard uncertainty of an echo's onset, as a share of its rise, for what terminals and other waves do to its shape
+(common practice, no source)."""
+
 FAINT_ECHO = 0.05
 """An echo of this share of the launched pulse is as likely the event's as not (common practice, no source)."""
 
@@ -80,7 +88,7 @@ def locate(case: Case, *, coverage: float = 0.95) -> Finding:
     """
     observations = tuple(observe(case, terminal) for terminal in case.terminals)
     zero_ns = min((o.record.start_ns for o in observations if o.record.start_ns is not None), default=None)
-    stations = [_station(observation, zero_ns) for observation in observations]
+    stations = [station_of(observation, zero_ns) for observation in observations]
     readings = [r for index, observation in enumerate(observations) for r in _readings(index, observation, zero_ns)]
     checks = [*_gates(observations, zero_ns), *_transit_checks(case, stations, readings)]
     found, reason = _estimate(case, stations, readings, checks, coverage)
@@ -100,9 +108,16 @@ def locate(case: Case, *, coverage: float = 0.95) -> Finding:
 # ---------------------------------------------------------------- observations to evidence
 
 
-def _station(observation: Observation, zero_ns: int | None) -> Station:
+def station_of(observation: Observation, zero_ns: int | None) -> Station:
+    """Return what the arithmetic needs to know of a terminal; `zero_ns` as in :class:`Finding`."""
     terminal = observation.terminal
-    return Station(terminal.node, _clock(observation, zero_ns), terminal.delay, terminal.launches is not None)
+    return Station(
+        terminal.node,
+        _clock(observation, zero_ns),
+        terminal.delay,
+        reflects=terminal.reflects,
+        launches=terminal.launches is not None,
+    )
 
 
 def _clock(observation: Observation, zero_ns: int | None) -> Quantity | None:
@@ -132,7 +147,8 @@ def _readings(index: int, observation: Observation, zero_ns: int | None) -> list
 
 
 def _reading(index: int, offset_s: float, arrival: Arrival) -> Reading:
-    return Reading(index, offset_s + arrival.time_s, arrival.u_s, arrival.outlier)
+    blur_s = ECHO_BLUR * arrival.rise_s
+    return Reading(index, offset_s + arrival.time_s, arrival.u_s, arrival.outlier, arrival.polarity, blur_s)
 
 
 def _echo_reading(index: int, echo: Arrival, launched: Arrival) -> Reading:
@@ -159,8 +175,14 @@ def _gates(observations: Sequence[Observation], zero_ns: int | None) -> list[Gat
     return [
         Gate(f"{observation.terminal.node}: {gate.name}", gate.passed, gate.detail, gate.fatal)
         for observation in observations
-        for gate in (*observation.gates, _clock_gate(observation, zero_ns))
+        for gate in (_front_gate(observation), *observation.gates, _clock_gate(observation, zero_ns))
     ]
+
+
+def _front_gate(observation: Observation) -> Gate:
+    arrivals = observation.picks.arrivals
+    detail = f"{len(arrivals)}, the first {arrivals[0].snr_db:.0f} dB above it" if arrivals else "none does"
+    return Gate("a front stands out of the noise", bool(arrivals), detail)
 
 
 def _clock_gate(observation: Observation, zero_ns: int | None) -> Gate:
@@ -215,7 +237,7 @@ def _estimate(
     if fatal:
         return None, "; ".join(fatal)
     try:
-        return estimate(case.route, stations, readings, coverage=coverage), ""
+        return estimate(case.route, stations, readings, coverage=coverage, again=EVENT_REFLECTS[case.kind]), ""
     except NoPosition as error:
         return None, str(error)
 

@@ -155,3 +155,17 @@ def test_aerial_modes_do_not_see_what_all_phases_share():
 def test_a_trace_must_be_finite():
     with pytest.raises(ValueError, match="voltage has 1 missing or infinite samples of 3"):
         pick(Trace(np.array([1.0, np.nan, 2.0]), RATE_HZ, name="voltage"))
+
+
+def test_hum_that_steepens_before_the_event_is_no_front():
+    """A fifth of a cycle from the crest on: the noise is measured where the hum is level, the front is on its slope."""
+    rng = np.random.default_rng(11)
+    rate, n, onset = 1.25e6, 10_000, 5_200.3
+    hum = 180e3 * np.cos(2 * np.pi * 50 * np.arange(n) / rate + np.array([[0.0], [-2.1], [2.1]]))
+    phases = hum + rng.normal(0, 40.0, (3, n))
+    phases[1] -= 20e3 * step(n, onset, 2.0)
+    assert strongest_mode(phases) == "alpha (b)"
+    trace = Trace(np.asarray(AERIAL_MODES["alpha (b)"]) @ phases, rate, line_frequency_hz=50.0)
+    first = pick(trace).arrivals[0]
+    assert first.time_s * rate == pytest.approx(onset, abs=1.0)
+    assert first.polarity == -1

@@ -55,6 +55,42 @@ def test_e4_far_end_echo_calibrates_the_speed():
     assert found.point.u_m < 1.0
 
 
+LOW = {"reflects": -1}
+"""A low-impedance bus: the event's echo has the sign of the first front, the far end's the other."""
+
+
+def test_e3_e4_one_end_that_only_listens():
+    """The event's own echo behind the first front at 2x/v, the far end's at 2(L − x)/v: x = L·d1/(d1 + d2)."""
+    x, v = 73_500.0, 2.94e8
+    again, far = 2 * x / v, 2 * (200e3 - x) / v
+    route = line(speed=2.90e8, u_speed=4e6)
+    readings = [Reading(0, 0.0, 1e-8, 0.0, 1), Reading(0, again, 1e-8, 0.0, 1), Reading(0, far, 1e-8, 0.0, -1)]
+    found = estimate(route, [Station("A", None, **LOW), Station("B", None, **LOW)], readings)
+    assert found.point.distance_m == pytest.approx(200e3 * again / (again + far), abs=2.0)
+    assert {fit.path for fit in found.fits.values()} == {"direct", "direct, and again by the event", "by B"}
+
+
+def test_one_end_that_only_listens_cannot_tell_the_mirror_image_without_signs():
+    again, far = 2 * 73_500.0 / 2.94e8, 2 * 126_500.0 / 2.94e8
+    readings = [Reading(0, 0.0, 1e-8), Reading(0, again, 1e-8), Reading(0, far, 1e-8)]
+    found = estimate(line(), [Station("A", None)], readings)
+    places = sorted(row.point.distance_m for row in found.alternatives[:2])
+    assert places == pytest.approx([73_500.0, 126_500.0], abs=5.0)
+    assert [row.probability for row in found.alternatives[:2]] == pytest.approx([0.5, 0.5], abs=0.02)
+    assert not found.in_one_run
+
+
+@pytest.mark.parametrize("offset", [0.0, 20e-6, 1.0])
+def test_e5_two_ends_without_a_common_clock(offset):
+    """x = L·dA/(dA + dB) from the event's own echoes, whatever the clocks and the speed."""
+    d_a, d_b = 500.000 * MICRO, 860.5442177 * MICRO
+    route = line(speed=2.90e8, u_speed=4e6)
+    times = [(0, 0.0), (0, d_a), (1, offset), (1, offset + d_b)]
+    readings = [Reading(station, time, 1e-8, 0.0, 1) for station, time in times]
+    found = estimate(route, [Station("A", None, **LOW), Station("B", None, **LOW)], readings)
+    assert found.point.distance_m == pytest.approx(73_500.0, abs=2.0)  # slowness is taken as linear in speed
+
+
 @pytest.mark.parametrize(("change", "shift"), [(1e-3, -26.5), (1e-2, -265.0)])
 def test_e6_speed_sensitivity(change, shift):
     t_a, t_b = 73_500.0 / 2.94e8, 126_500.0 / 2.94e8

@@ -6,7 +6,7 @@ from statistics import NormalDist
 import numpy as np
 
 from twlocate.arrays import FloatArray
-from twlocate.arrivals.modulus import Modulus, dyadic_scales, haar_coefficients, modulus
+from twlocate.arrivals.modulus import Modulus, dyadic_scales, haar_coefficients, modulus, without_trend
 
 FIRST_LOOK = 0.1
 """The noise is first measured on this share of the record, then on everything before the first front."""
@@ -50,27 +50,44 @@ def threshold(false_alarm: float, n: int, n_scales: int) -> float:
     return -NormalDist().inv_cdf(false_alarm / (2 * n * n_scales))
 
 
-def first_front(samples: FloatArray, step: float, false_alarm: float) -> tuple[Candidate | None, int]:
-    """Return the first front, or None, and the number of samples before it."""
+@dataclass(frozen=True)
+class FirstFront:
+    """The first front, what precedes it, and how long the strongest front is."""
+
+    front: Candidate | None
+    quiet: int
+    """Samples before the first front."""
+    scale: int
+    """About the rise time of the strongest front, samples: the one by which later fronts are told apart."""
+
+
+def first_front(samples: FloatArray, step: float, false_alarm: float) -> FirstFront:
+    """Find the first front: on the noise in the first tenth of the record, then on all that precedes it."""
     quiet = max(int(FIRST_LOOK * samples.size), FEWEST_QUIET)
-    found: Candidate | None = None
+    front: Candidate | None = None
+    scale = 2
     for _ in range(2):
         scales = dyadic_scales(2, max(quiet // (2 * WINDOWS_A_SCALE), 2))
         field = modulus(samples, scales, quiet, step)
         limit = threshold(false_alarm, samples.size, len(scales))
-        found = _earliest(samples, field, limit)
-        quiet = samples.size if found is None else max(found.sample - 2 * found.scale, 0)
+        front = _earliest(samples, field, limit)
+        if front is None:
+            return FirstFront(None, samples.size, scale)
+        scale = _grown(samples, field, limit, 0, int(field.largest.argmax())).scale
+        quiet = max(front.sample - 2 * front.scale, 0)
         if quiet < FEWEST_QUIET:
             break
-    return found, quiet
+    return FirstFront(front, quiet, scale)
 
 
 def _earliest(samples: FloatArray, field: Modulus, limit: float) -> Candidate | None:
-    """Follow the earliest front from the finest scale that shows it to the scale at which it stops growing."""
+    """Return the earliest front, followed from the finest scale that shows it."""
     above = np.flatnonzero(field.largest > limit)
-    if above.size == 0:
-        return None
-    index, start = _finest(samples, field, limit, int(above[0]))
+    return None if above.size == 0 else _grown(samples, field, limit, *_finest(samples, field, limit, int(above[0])))
+
+
+def _grown(samples: FloatArray, field: Modulus, limit: float, index: int, start: int) -> Candidate:
+    """Follow a front from sample `start` at the scale `index` to the scale at which it stops growing."""
     heights = np.abs(haar_coefficients(samples, field.scales[index]))
     peak = _uphill(heights, start, field.scales[index])
     margin = heights[peak] / field.sigmas[index] - limit
@@ -95,7 +112,8 @@ def _finest(samples: FloatArray, field: Modulus, limit: float, start: int) -> tu
     coarse = int(field.strongest[start])
     stop = start + 2 * field.scales[coarse]
     for index in range(coarse):
-        heights = np.abs(haar_coefficients(samples, field.scales[index])[start:stop])
+        scale = field.scales[index]
+        heights = np.abs(without_trend(haar_coefficients(samples, scale), scale)[start:stop])
         above = np.flatnonzero(heights > limit * field.sigmas[index])
         if above.size:
             return index, start + int(above[0])
@@ -114,26 +132,26 @@ def _uphill(heights: FloatArray, start: int, reach: int) -> int:
 
 
 def later_fronts(
-    denoised: FloatArray, first: Candidate, field_sigma: float, limit: float, most: int
+    denoised: FloatArray, first: Candidate, scale: int, field_sigma: float, limit: float, most: int
 ) -> list[Candidate]:
     """Return the `most` strongest fronts behind the first one, in time order.
 
-    They are maxima of the denoised trace's modulus at the scale of the first front.
+    They are maxima of the denoised trace's modulus at one scale.
     """
-    coefficients = haar_coefficients(denoised, first.scale)
+    coefficients = haar_coefficients(denoised, scale)
     height = np.abs(coefficients)
-    start = first.sample + 2 * first.scale
+    start = first.sample + 2 * max(scale, first.scale)
     least = max(limit * field_sigma, SMALLEST_LATER * float(height[first.sample]))
     found: list[Candidate] = []
     while len(found) < MOST_WEIGHED:
         above = np.flatnonzero(height[start:] > least)
         if above.size == 0:
             break
-        region = slice(start + int(above[0]), start + int(above[0]) + 2 * first.scale)
+        region = slice(start + int(above[0]), start + int(above[0]) + 2 * scale)
         peak = region.start + int(height[region].argmax())
         margin = float(height[peak]) / field_sigma - limit
         polarity = 1 if coefficients[peak] > 0 else -1
-        found.append(Candidate(peak, first.scale, polarity, float(height[peak]), margin))
-        start = peak + 2 * first.scale
+        found.append(Candidate(peak, scale, polarity, float(height[peak]), margin))
+        start = peak + 2 * scale
     strongest = sorted(found, key=lambda candidate: -candidate.margin)[:most]
     return sorted(strongest, key=lambda candidate: candidate.sample)

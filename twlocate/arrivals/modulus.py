@@ -15,8 +15,10 @@ from twlocate.arrays import FloatArray
 
 TINY = 1e-300
 
-SILENT_SHARE = 0.25
-"""Of the converter step, where the noise is too small to spread the rounding: a step up or down is then no front."""
+SILENT_SHARE = 0.5
+"""Of the converter step, where the noise is too small to spread the rounding: one step up and back is then no front."""
+
+STANDS_OUT = 4.0
 
 MEDIAN_OF_NORMAL = 0.6744897501960817
 """The median of |z| for a standard normal z."""
@@ -43,15 +45,32 @@ def haar_coefficients(samples: FloatArray, scale: int) -> FloatArray:
 
 
 def robust_sigma(values: FloatArray, least: float = 0.0) -> float:
-    """Return the standard deviation of normal noise with the same median modulus, at least `least`."""
+    """Return the standard deviation of the values less those that stand out of normal noise, at least `least`.
+
+    What stands out is more than `STANDS_OUT` times what the median modulus tells; the median alone is coarse where
+    readings are few converter steps high.
+    """
     if values.size == 0:
         return least
-    return max(float(np.median(np.abs(values))) / MEDIAN_OF_NORMAL, least)
+    size = np.abs(values)
+    rough = float(np.median(size)) / MEDIAN_OF_NORMAL
+    inside = size[size <= STANDS_OUT * rough]
+    return max(float(np.sqrt(np.mean(inside**2))), least)
+
+
+def without_trend(coefficients: FloatArray, scale: int) -> FloatArray:
+    """Subtract the coefficient two scales earlier: a steady slope, as of the power frequency, is then no front.
+
+    Looking back only, it puts nothing before a front; what it puts behind one is of no concern to the first.
+    """
+    free = np.zeros_like(coefficients)
+    free[3 * scale :] = coefficients[3 * scale :] - coefficients[scale : max(free.size - 2 * scale, scale)]
+    return free
 
 
 @dataclass(frozen=True)
 class Modulus:
-    """Haar coefficients at several scales in units of the noise before the event."""
+    """Haar coefficients, free of trend, at several scales in units of the noise before the event."""
 
     scales: tuple[int, ...]
     sigmas: tuple[float, ...]
@@ -73,10 +92,10 @@ def modulus(samples: FloatArray, scales: tuple[int, ...], quiet: int, step: floa
     sigmas: list[float] = []
     silent = robust_sigma(np.diff(samples[:quiet])) < step
     for index, scale in enumerate(scales):
-        coefficients = haar_coefficients(samples, scale)
-        rounded = step * SILENT_SHARE if silent else step / np.sqrt(6 * scale)  # two means of `scale` rounded values
+        coefficients = without_trend(haar_coefficients(samples, scale), scale)
+        rounded = step * SILENT_SHARE if silent else step / np.sqrt(3 * scale)  # four means of `scale` rounded values
         least = max(rounded, rounding, TINY)
-        sigma = robust_sigma(coefficients[scale : max(quiet - scale, scale)], float(least))
+        sigma = robust_sigma(coefficients[3 * scale : max(quiet - scale, 3 * scale)], float(least))
         sigmas.append(sigma)
         relative = np.abs(coefficients) / sigma
         higher = relative > largest

@@ -15,7 +15,7 @@ SAMPLES_A_COEFFICIENT = 50
 HARMONICS = (1, 2, 3, 5, 7)
 """Of the power frequency; the even ones beyond the second and those above the seventh are small."""
 
-LEAST_CYCLES = 0.3
+LEAST_CYCLES = 0.1
 """Less of a power-frequency cycle than this before the event does not tell the hum from a drift."""
 
 

@@ -19,7 +19,7 @@ LARGEST_REACH = 32
 WINDOW = 3
 """Samples used before and behind a front, in units of its reach."""
 
-TRUSTED_OUTLIER = 1e-3
+TRUSTED_OUTLIER = 1e-6
 DOUBTFUL_OUTLIER = 0.1
 """Outlier probability of a front far above, and just at, the threshold (common practice, no source)."""
 
@@ -49,16 +49,17 @@ def pick(trace: Trace, *, false_alarm: float = 1e-3, most: int = 8) -> Picks:
     samples = as_signal(trace.samples, trace.name or "trace")
     trace = replace(trace, step=max(trace.step, _finest_step(samples)))
     samples = _hum_off(samples, trace, false_alarm)
-    first, quiet = first_front(samples, trace.step, false_alarm)
+    look = first_front(samples, trace.step, false_alarm)
+    first, quiet = look.front, look.quiet
     gates = [_quiet_gate(first, quiet)]
     if first is None or quiet < FEWEST_QUIET:
         return Picks(trace, samples, samples, 0.0, (), tuple(gates))
     noise = measure_noise(samples[:quiet], trace.step)
     denoised = shrink(samples, quiet)
-    sigma = robust_sigma(haar_coefficients(samples, first.scale)[first.scale : quiet], trace.step / np.sqrt(12))
+    sigma = robust_sigma(haar_coefficients(samples, look.scale)[look.scale : quiet], trace.step / np.sqrt(12))
     limit = threshold(false_alarm, samples.size, 1)
-    candidates = [first, *later_fronts(denoised, first, sigma, limit, most - 1)]
-    fronts = [_time(samples, candidates, index, quiet, trace.step) for index in range(len(candidates))]
+    candidates = [first, *later_fronts(denoised, first, look.scale, sigma, limit, most - 1)]
+    fronts = [_time(samples, candidates, index, quiet, noise, trace.step) for index in range(len(candidates))]
     arrivals = tuple(
         _arrival(trace, front, candidate, noise) for front, candidate in zip(fronts, candidates, strict=True)
     )
@@ -75,8 +76,8 @@ def _hum_off(samples: FloatArray, trace: Trace, false_alarm: float) -> FloatArra
     """Subtract the power frequency, as far as a first look at the fine scales tells what precedes the event."""
     if trace.line_frequency_hz is None:
         return samples
-    candidate, quiet = first_front(samples, trace.step, false_alarm)
-    before = quiet if candidate is None else max(candidate.sample - 4 * candidate.scale, 0)
+    look = first_front(samples, trace.step, false_alarm)
+    before = look.quiet if look.front is None else max(look.front.sample - 4 * look.front.scale, 0)
     return without_hum(samples, trace.rate_hz, trace.line_frequency_hz, before)
 
 
@@ -88,7 +89,7 @@ def _quiet_gate(first: Candidate | None, quiet: int) -> Gate:
     return Gate(name, True, f"{quiet} samples")
 
 
-def _time(samples: FloatArray, candidates: list[Candidate], index: int, quiet: int, step: float) -> Front:
+def _time(samples: FloatArray, candidates: list[Candidate], index: int, quiet: int, noise: Noise, step: float) -> Front:
     """Time one candidate within the room its neighbours leave, on averages if it rises slowly."""
     here = candidates[index]
     reach = max(SMALLEST_REACH, 2 * here.scale)
@@ -98,9 +99,9 @@ def _time(samples: FloatArray, candidates: list[Candidate], index: int, quiet: i
     low = max(behind, here.sample - WINDOW * reach, 0)
     high = min(max(ahead, here.sample + here.scale), here.sample + WINDOW * reach, samples.size)
     if block == 1:
-        return refine(samples, here.sample, reach, here.height, (low, high), measure_noise(samples[:quiet], step))
+        return refine(samples, here.sample, reach, here.height, (low, high), noise)
     averaged = samples[: samples.size // block * block].reshape(-1, block).mean(axis=1)
-    noise = measure_noise(averaged[: quiet // block], step / np.sqrt(block))
+    noise = measure_noise(averaged[: quiet // block], step / float(np.sqrt(block)))
     front = refine(averaged, here.sample / block, reach / block, here.height, (low // block, high // block), noise)
     middle = (block - 1) / 2
     return replace(

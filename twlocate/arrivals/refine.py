@@ -40,9 +40,6 @@ FILTER_U = 0.1
 """Samples; standard deviation of the onset that an anti-alias filter of none of the shapes leaves in the best fit,
 measured on fronts behind a four-pole Bessel filter at a third of the sampling rate."""
 
-FILTERED_RISE = 2.0
-"""Samples; a front that rises more slowly is shaped by the filter the less."""
-
 HEIGHTS = 3.0
 """Standard deviation of the prior of the height, in units of the modulus there."""
 
@@ -132,7 +129,7 @@ def refine(
     t, k = np.unravel_index(int(peak.log_density.argmax()), peak.log_density.shape)
     rise = float(np.exp(peak.log_rises[k]))
     fitted = _best_fit(view, float(peak.onsets[t]), SHAPES[best], rise)
-    u = float(np.hypot(u, FILTER_U / max(rise / FILTERED_RISE, 1.0)))
+    u = float(np.hypot(u, FILTER_U))
     return Front(first + onset, u, rise, best, window, fitted)
 
 

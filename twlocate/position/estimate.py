@@ -10,9 +10,10 @@ from twlocate.errors import NoPosition
 from twlocate.position.band import Piece, SectionDensity, band_length, highest_density, in_one_run
 from twlocate.position.budget import Contribution, budget
 from twlocate.position.evidence import Reading, Station
-from twlocate.position.explanations import Explanation, explain, path_of
+from twlocate.position.explanations import Cause, Explanation, path_of
 from twlocate.position.inputs import list_inputs
 from twlocate.position.linear import LinearModel, linear_model
+from twlocate.position.shortlist import explain
 from twlocate.routes import Route
 
 COARSE_POINTS = 129
@@ -78,6 +79,7 @@ def estimate(
     readings: Sequence[Reading],
     *,
     coverage: float = 0.95,
+    again: float = 0.5,
 ) -> Estimate:
     """Locate the event.
 
@@ -91,6 +93,9 @@ def estimate(
         Arrival times (s), those of a station in time order.
     coverage : float
         Probability that the band is to hold.
+    again : float
+        Prior probability that an echo at a station that listens is the event's own: a fault throws back much of a
+        wave, a leak little.
 
     Raises
     ------
@@ -100,22 +105,22 @@ def estimate(
         A reading's time or uncertainty is not a finite number, or the uncertainty is not positive.
     """
     _check(readings)
-    explanations = explain(route, stations, readings)
+    window_s = _window_s(route)
+    explanations = explain(route, stations, readings, window_s, again)
     models = [
         [linear_model(route, section, stations, readings, explanation) for section in range(len(route.sections))]
         for explanation in explanations
     ]
-    if not any(row[0].informative for row in models):
-        raise NoPosition(_too_little(stations, readings))
-    grids = [_grid(route, section, [row[section] for row in models]) for section in range(len(route.sections))]
-    shares = _share_out(route, explanations, models, grids)
+    if not any(_informative(row) for row in models):
+        raise NoPosition(_too_little(stations, readings) or _too_wide(coverage))
+    grids, shares = _share_out(route, explanations, models, window_s)
     densities = tuple(SectionDensity(x, share.sum(axis=0)) for x, share in zip(grids, shares, strict=True))
     band = highest_density(densities, coverage)
-    groups = _alternatives(route, stations, explanations, models, grids, shares, coverage)
+    groups = _alternatives(route, stations, readings, explanations, models, grids, shares, coverage)
     if band_length(band) > WIDEST_BAND * route.length_m or not groups:
         raise NoPosition(_only_nodes(stations, explanations, groups, coverage) or _too_wide(coverage))
     leading, alternative = groups[0]
-    model = models[leading][alternative.point.section]
+    model = _possible(models[leading][alternative.point.section])
     names = [_reading_name(stations, readings, index) for index, _ in explanations[leading].causes]
     return Estimate(
         point=alternative.point,
@@ -146,36 +151,58 @@ def _window_s(route: Route) -> float:
     return 2 * sum(s.length.value / (s.speed.value - abs(s.flow.value)) for s in route.sections)
 
 
-def _grid(route: Route, section: int, models: Sequence[LinearModel]) -> FloatArray:
-    """Even points over the section, and close ones wherever an explanation has its peak."""
-    length = route.sections[section].length.value
-    points = [np.linspace(0.0, length, COARSE_POINTS)]
-    for model in models:
-        if model.informative:
-            peak, u = model.best_x(length)
-            points.append(peak + max(u, FINEST_GRID * length) * FINE_STEPS)
-    grid = np.unique(np.concatenate(points))
-    return grid[(grid >= 0.0) & (grid <= length)]
+def _informative(models: Sequence[LinearModel | None]) -> bool:
+    """Whether an explanation says anything about the place."""
+    return any(model is not None and model.informative for model in models)
+
+
+def _possible(model: LinearModel | None) -> LinearModel:
+    """Return a model that is known to exist, because its explanation has its peak in that section."""
+    if model is None:
+        raise AssertionError("an explanation without a path has no density")
+    return model
+
+
+def _own_grid(model: LinearModel, length_m: float) -> FloatArray:
+    """Return even points over a section, and close ones where the explanation has its peak."""
+    points = np.linspace(0.0, length_m, COARSE_POINTS)
+    if not model.informative:
+        return points
+    peak, u = model.best_x(length_m)
+    fine = peak + max(u, FINEST_GRID * length_m) * FINE_STEPS
+    return np.unique(np.concatenate([points, fine[(fine >= 0.0) & (fine <= length_m)]]))
 
 
 def _share_out(
-    route: Route, explanations: Sequence[Explanation], models: Sequence[Sequence[LinearModel]], grids: list[FloatArray]
-) -> list[FloatArray]:
-    """Return the density of each explanation on each section's grid, (E, G) a section, all adding up to one."""
-    window = _window_s(route)
-    logs = [
-        np.array(
-            [
-                np.log(explanation.prior) + row[section].log_likelihood(x, window)
-                for explanation, row in zip(explanations, models, strict=True)
-            ]
-        )
-        for section, x in enumerate(grids)
-    ]
+    route: Route,
+    explanations: Sequence[Explanation],
+    models: Sequence[Sequence[LinearModel | None]],
+    window_s: float,
+) -> tuple[list[FloatArray], list[FloatArray]]:
+    """Return for each section the grid (G,) and each explanation's density on it (E, G), all adding up to one.
+
+    Every explanation is evaluated on a grid of its own; its log density is interpolated to the union of them.
+    """
+    grids, logs = [], []
+    for section, length in enumerate(s.length.value for s in route.sections):
+        own = [
+            None if row[section] is None else _own_log(row[section], e, length, window_s)
+            for row, e in zip(models, explanations, strict=True)
+        ]
+        grid = np.unique(np.concatenate([np.array([0.0, length]), *(x for x, _ in filter(None, own))]))
+        grids.append(grid)
+        logs.append(np.array([np.full(grid.size, -np.inf) if o is None else np.interp(grid, *o) for o in own]))
     top = max(float(log.max()) for log in logs)
     raw = [np.exp(log - top) for log in logs]
     total = sum(float(np.trapezoid(share, x, axis=1).sum()) for share, x in zip(raw, grids, strict=True))
-    return [share / total for share in raw]
+    return grids, [share / total for share in raw]
+
+
+def _own_log(
+    model: LinearModel | None, explanation: Explanation, length_m: float, window_s: float
+) -> tuple[FloatArray, FloatArray]:
+    x = _own_grid(_possible(model), length_m)
+    return x, np.log(explanation.prior) + _possible(model).log_likelihood(x, window_s)
 
 
 # ---------------------------------------------------------------- alternatives
@@ -184,8 +211,9 @@ def _share_out(
 def _alternatives(
     route: Route,
     stations: Sequence[Station],
+    readings: Sequence[Reading],
     explanations: Sequence[Explanation],
-    models: Sequence[Sequence[LinearModel]],
+    models: Sequence[Sequence[LinearModel | None]],
     grids: list[FloatArray],
     shares: list[FloatArray],
     coverage: float,
@@ -195,14 +223,14 @@ def _alternatives(
     for index, explanation in enumerate(explanations):
         own = [SectionDensity(x, share[index]) for x, share in zip(grids, shares, strict=True)]
         probability = sum(section.mass for section in own)
-        if models[index][0].informative and probability > (1 - coverage) / 50:
+        if _informative(models[index]) and probability > (1 - coverage) / 50:
             point = _peak(own, models[index])
-            words = _attribution(route, stations, explanation, point.section)
+            words = _attribution(route, stations, readings, explanation, point.section)
             found.append((index, Alternative(point, highest_density(own, coverage), probability, words)))
     return sorted(found, key=lambda item: -item[1].probability)
 
 
-def _peak(densities: Sequence[SectionDensity], models: Sequence[LinearModel]) -> Point:
+def _peak(densities: Sequence[SectionDensity], models: Sequence[LinearModel | None]) -> Point:
     """Return the highest point of the density; where most of it lies on a plateau, the middle of that."""
     likeliest = max(range(len(densities)), key=lambda index: densities[index].mass)
     if _u_of_peak(densities[likeliest], models[likeliest]) is None:
@@ -212,18 +240,27 @@ def _peak(densities: Sequence[SectionDensity], models: Sequence[LinearModel]) ->
     return Point(section, densities[section].mode, peaks[section])
 
 
-def _u_of_peak(density: SectionDensity, model: LinearModel) -> float | None:
+def _u_of_peak(density: SectionDensity, model: LinearModel | None) -> float | None:
     """Return the standard uncertainty of a section's peak, m; None where it would be wider than the section."""
+    if model is None or density.mass == 0:
+        return None
     curvature = model.pull(density.mode)[1]
     length = float(density.x[-1])
     return curvature**-0.5 if curvature * length**2 > 1 else None
 
 
-def _attribution(route: Route, stations: Sequence[Station], explanation: Explanation, section: int) -> str:
-    words = [path_of(cause, route, section, stations[0].node).name for _, cause in explanation.causes]
+def _attribution(
+    route: Route, stations: Sequence[Station], readings: Sequence[Reading], explanation: Explanation, section: int
+) -> str:
+    words = [_path_name(route, stations, readings[index], cause, section) for index, cause in explanation.causes]
     counted = [f"{words.count(word)} × {word}" if words.count(word) > 1 else word for word in dict.fromkeys(words)]
     wrong = [f"clock of {stations[s].node} taken as wrong" for s in sorted(explanation.wrong_clocks)]
     return ", ".join(counted + wrong)
+
+
+def _path_name(route: Route, stations: Sequence[Station], reading: Reading, cause: Cause, section: int) -> str:
+    path = path_of(cause, route, section, stations[reading.station].node)
+    return path.name if path else "no path"
 
 
 def _fits(
@@ -234,10 +271,13 @@ def _fits(
     model: LinearModel,
     point: Point,
 ) -> dict[int, Fit]:
-    """Return path and residual of each attributed reading at the best place and event time."""
+    """Return the path of each attributed reading, and the error of its time that the best place leaves to it.
+
+    The residual is shared out between the inputs and the reading in proportion to their variances.
+    """
     left = model.left_over(point.distance_m)
     return {
-        index: Fit(path_of(cause, route, point.section, stations[readings[index].station].node).name, float(rest))
+        index: Fit(_path_name(route, stations, readings[index], cause, point.section), float(rest))
         for (index, cause), rest in zip(explanation.causes, left, strict=True)
     }
 
@@ -252,6 +292,7 @@ def _reading_name(stations: Sequence[Station], readings: Sequence[Reading], inde
 
 
 def _too_little(stations: Sequence[Station], readings: Sequence[Reading]) -> str:
+    """Say what is lacking; empty where there is enough and it contradicts itself."""
     seen = {reading.station for reading in readings}
     silent = [station.node for s, station in enumerate(stations) if s not in seen]
     if silent:
@@ -261,10 +302,12 @@ def _too_little(stations: Sequence[Station], readings: Sequence[Reading]) -> str
     free = [station.node for station in stations if station.clock is None]
     if free:
         return (
-            f"the clock of {', '.join(free)} is free and first arrivals alone do not place the event without it; "
-            "give its clock an uncertainty, or another terminal"
+            f"the clock of {', '.join(free)} is free, and without it and without echoes the first arrivals do not "
+            "place the event; give its clock an uncertainty, or add another terminal"
         )
-    return "one terminal's first arrival does not place the event; add a second terminal or a launched pulse"
+    if len(stations) == 1:
+        return "one terminal's first arrival does not place the event; add a second terminal or a launched pulse"
+    return ""
 
 
 def _only_nodes(

@@ -16,6 +16,8 @@ class Station:
     """By how much its clock is ahead of the common time, s; None where its clock is free."""
     delay: Quantity = ZERO
     """How much later than the wave its recorder sees it, s."""
+    reflects: int = 0
+    """Sign of what its bus makes of an across wave: −1 low, +1 high impedance, 0 not known."""
     launches: bool = False
     """Whether its first reading is a signal it sent into the route itself."""
 
@@ -30,3 +32,7 @@ class Reading:
     u_s: float
     outlier: float = 0.0
     """Probability that this is not a front of the event, so that its time says nothing."""
+    polarity: int = 0
+    """Sign of the front; 0 where it is not to be used."""
+    blur_s: float = 0.0
+    """Standard uncertainty to be added where the reading is taken for an echo of the first front."""

@@ -1,7 +1,8 @@
-"""Which wave is which: every way to attribute the readings to wave paths, with its prior probability.
+"""Which wave is which: ways to attribute the readings to wave paths, each with its prior probability.
 
-An explanation is kept as data, not as a program: the first fronts at several ends, a pulse and its echo, a
-clock that is wrong or a pick that is not a front are all rows of the same list.
+An explanation is kept as data, not as a program: the first fronts at several ends, their echoes, a pulse and its
+echo, a clock that is wrong or a pick that is not a front are all rows of the same list. Each station on its own
+has a few dozen ways to take its readings; :mod:`~twlocate.position.shortlist` picks the joint ones worth weighing.
 """
 
 import itertools
@@ -10,22 +11,45 @@ from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 
 from twlocate.position.evidence import Reading, Station
-from twlocate.routes import Route, WavePath, direct_path, echo_path, node_echo_path, repeated_echo_path, transit_s
+from twlocate.routes import (
+    Route,
+    WavePath,
+    again_path,
+    direct_path,
+    echo_path,
+    mirror_path,
+    node_echo_path,
+    repeated_echo_path,
+    transit_s,
+)
 
 CLOCK_WRONG = 1e-3
 """Prior probability that a clock is off by far more than it states (common practice, no source)."""
 
 SMALLEST_OUTLIER = 1e-3
-"""No pick is trusted more than this, however clean it looks (common practice, no source)."""
+"""No station's picks are trusted more than this, however clean they look (common practice, no source)."""
 
-NEGLIGIBLE = 1e-9
-"""Explanations with a smaller prior are left out."""
+NEGLIGIBLE = 1e-12
+"""Ways of taking a station's readings with a smaller prior are left out."""
 
 LATER_READINGS = 4
-"""How many echoes behind a launched pulse, the least doubtful ones, are weighed against each other."""
+"""How many later readings of a station, the least doubtful ones, are weighed as echoes."""
 
-EARLIER_READINGS = 3
+FIRST_READINGS = 3
 """How many readings a station may offer as its first front."""
+
+OTHER_WAVE = 0.5
+"""Prior probability that a front behind the first is neither of the echoes that are looked for: a wave of another
+mode, of a neighbouring line, of a second event (common practice, no source)."""
+
+PRIOR_OF_ECHO = {"node": 0.3, "repeat": 0.2}
+"""Prior probability that a front behind a launched pulse is this kind of echo (common practice, no source)."""
+
+ECHO_UNSEEN = 0.02
+"""Prior probability that an event gives no echo of a launched pulse that stands out (common practice, no source)."""
+
+SIGN_TRUSTED = 0.95
+"""Probability that a front has the sign that its path predicts (common practice, no source)."""
 
 
 MIRROR_SIGMAS = 8.0
@@ -36,121 +60,160 @@ MIRROR_SIGMAS = 8.0
 class Cause:
     """What a reading is taken for, whatever section the event is in.
 
-    ``kind`` is one of ``direct``, ``launch``, ``echo``, ``repeat`` and ``node``; ``node`` names the mirror
-    of a node echo.
+    ``kind`` is ``direct``, ``again`` or ``mirror`` at a station that listens, ``launch``, ``echo``, ``repeat`` or
+    ``node`` at one that launches; ``node`` names the mirror of the kinds that have one.
     """
 
     kind: str
     node: str = ""
 
 
-@dataclass(frozen=True)
-class Explanation:
-    """An attribution of the readings, and which clocks are wrong in it.
+ECHOES = ("again", "mirror")
+"""Kinds of cause that are echoes at a station that listens."""
 
-    Readings that are not in `causes` are strays: noise, or waves that are not needed.
-    """
+
+@dataclass(frozen=True)
+class Part:
+    """One station's share of an explanation: causes of some of its readings, the others being strays."""
 
     causes: tuple[tuple[int, Cause], ...]
-    """(index of the reading, its cause)."""
+    """(index of the reading, its cause); the first is the one that the others are echoes of."""
+    prior: float
+
+
+@dataclass(frozen=True)
+class Explanation:
+    """An attribution of the readings of all stations, and which clocks are wrong in it."""
+
+    causes: tuple[tuple[int, Cause], ...]
     wrong_clocks: frozenset[int]
     prior: float
 
 
-def path_of(cause: Cause, route: Route, section: int, node: str) -> WavePath:
-    """Return the wave path of a cause for an event in `section`, recorded at `node`."""
+def path_of(cause: Cause, route: Route, section: int, node: str) -> WavePath | None:
+    """Return the wave path of a cause for an event in `section`, recorded at `node`; None if there is none."""
     if cause.kind == "node":
         return node_echo_path(route, node, cause.node)
+    if cause.kind == "mirror":
+        return mirror_path(route, section, node, cause.node)
     return _PATHS[cause.kind](route, section, node)
 
 
 _PATHS = {
     "direct": direct_path,
+    "again": again_path,
     "launch": lambda _route, _section, _node: WavePath("launched pulse", ()),
     "echo": echo_path,
     "repeat": repeated_echo_path,
 }
 
 
-def explain(route: Route, stations: Sequence[Station], readings: Sequence[Reading]) -> tuple[Explanation, ...]:
-    """List every explanation of the readings whose prior is not negligible; the priors add up to one."""
-    by_station = [[i for i, reading in enumerate(readings) if reading.station == s] for s in range(len(stations))]
-    choices = [
-        list(_of_pulse(route, station, own, readings) if station.launches else _of_first_front(own, readings))
-        for station, own in zip(stations, by_station, strict=True)
-    ]
-    found = []
-    for parts in itertools.product(*choices):
-        for wrong, clock_prior in _clock_states(stations):
-            prior = clock_prior * math.prod(part.prior for part in parts)
-            if prior > NEGLIGIBLE:
-                causes = tuple(itertools.chain.from_iterable(part.causes for part in parts))
-                found.append(Explanation(causes, wrong, prior))
-    total = sum(explanation.prior for explanation in found)
-    return tuple(Explanation(e.causes, e.wrong_clocks, e.prior / total) for e in found)
+def parts_of(
+    route: Route, stations: Sequence[Station], station: int, readings: Sequence[Reading], again: float
+) -> tuple[Part, ...]:
+    """List the ways to take one station's readings.
+
+    `again` is the prior probability that an echo at a station that listens is the event's own.
+    """
+    own = [index for index, reading in enumerate(readings) if reading.station == station]
+    if stations[station].launches:
+        found = _of_launch(route, stations, station, own, readings)
+    else:
+        found = _of_first_front(route, stations, station, own, readings, again)
+    return tuple(part for part in found if part.prior > NEGLIGIBLE)
 
 
-@dataclass(frozen=True)
-class _Part:
-    """One station's share of an explanation."""
-
-    causes: tuple[tuple[int, Cause], ...]
-    prior: float
-
-
-def _clock_states(stations: Sequence[Station]) -> Iterator[tuple[frozenset[int], float]]:
-    """All clocks right, or one of the stated ones wrong; a launch and its echoes need none."""
+def clock_states(stations: Sequence[Station]) -> tuple[tuple[frozenset[int], float], ...]:
+    """Return (wrong clocks, prior): all clocks right, or one of the stated ones wrong; a launch needs none."""
     stated = [s for s, station in enumerate(stations) if station.clock is not None and not station.launches]
     wrongable = stated if len(stated) > 1 else []
-    yield frozenset(), 1.0 - CLOCK_WRONG * len(wrongable)
-    for station in wrongable:
-        yield frozenset({station}), CLOCK_WRONG
+    right = (frozenset[int](), 1.0 - CLOCK_WRONG * len(wrongable))
+    return (right, *((frozenset({station}), CLOCK_WRONG) for station in wrongable))
 
 
-def _outlier(reading: Reading) -> float:
-    return max(reading.outlier, SMALLEST_OUTLIER)
+def _least_doubtful(indices: Sequence[int], readings: Sequence[Reading]) -> list[int]:
+    return sorted(sorted(indices, key=lambda index: readings[index].outlier)[:LATER_READINGS])
 
 
-def _of_first_front(own: Sequence[int], readings: Sequence[Reading]) -> Iterator[_Part]:
-    """The first front is the n-th reading, those before it are strays; or all are strays."""
+def _of_first_front(
+    route: Route,
+    stations: Sequence[Station],
+    station: int,
+    own: Sequence[int],
+    readings: Sequence[Reading],
+    again: float,
+) -> Iterator[Part]:
+    """The first front is the n-th reading, those before it are strays, some behind it echoes; or all are strays."""
     earlier_wrong = 1.0
-    for index in own[:EARLIER_READINGS]:
-        wrong = _outlier(readings[index])
-        yield _Part(((index, Cause("direct")),), earlier_wrong * (1 - wrong))
+    for rank, index in enumerate(own[:FIRST_READINGS]):
+        wrong = readings[index].outlier
+        later = _least_doubtful(own[rank + 1 :], readings)
+        for echoes, prior in _echoes(route, stations, station, index, later, readings, again):
+            yield Part(((index, Cause("direct")), *echoes), earlier_wrong * (1 - wrong) * prior)
         earlier_wrong *= wrong
-    yield _Part((), earlier_wrong)
+    yield Part((), max(earlier_wrong, SMALLEST_OUTLIER))
 
 
-ECHO_UNSEEN = 0.02
-"""Prior probability that the event gives no echo that stands out (common practice, no source)."""
+def _echoes(
+    route: Route,
+    stations: Sequence[Station],
+    station: int,
+    first: int,
+    later: Sequence[int],
+    readings: Sequence[Reading],
+    again: float,
+) -> Iterator[tuple[tuple[tuple[int, Cause], ...], float]]:
+    """Yield (echoes, prior) for every way to take the readings behind the first front `first`."""
+    mirrors = [node for node in route.nodes if node != stations[station].node]
+    signs = {s.node: s.reflects for s in stations}
+    causes = [(Cause("again"), again, -signs[stations[station].node])]
+    causes += [(Cause("mirror", mirror), (1 - again) / len(mirrors), signs.get(mirror, 0)) for mirror in mirrors]
+    options = []
+    for index in later:
+        other = max(readings[index].outlier, OTHER_WAVE)
+        turn = readings[index].polarity * readings[first].polarity
+        weighed = [(index, cause, (1 - other) * share * _sign_weight(turn, sign)) for cause, share, sign in causes]
+        options.append([(index, None, other), *weighed])
+    for picked in itertools.product(*options):
+        echoes = tuple((index, cause) for index, cause, _ in picked if cause is not None)
+        if _once_each(echoes):
+            yield echoes, math.prod(weight for _, _, weight in picked)
 
-_PRIOR_OF_ECHO = {"node": 0.3, "repeat": 0.2}
-"""Prior probability that a given later front is this kind of echo (common practice, no source)."""
+
+def _sign_weight(turn: int, predicted: int) -> float:
+    """Weigh whether an echo has the sign, relative to the first front, that its path predicts; 1 if not known."""
+    if turn * predicted == 0:
+        return 1.0
+    return 2 * (SIGN_TRUSTED if turn == predicted else 1 - SIGN_TRUSTED)
 
 
-def _of_pulse(route: Route, station: Station, own: Sequence[int], readings: Sequence[Reading]) -> Iterator[_Part]:
+def _of_launch(
+    route: Route, stations: Sequence[Station], station: int, own: Sequence[int], readings: Sequence[Reading]
+) -> Iterator[Part]:
     """The first reading is the pulse; one of the later ones, or none, is the event's echo; the others are not."""
     if not own:
-        yield _Part((), 1.0)
+        yield Part((), 1.0)
         return
     launch = (own[0], Cause("launch"))
-    likeliest = sorted(own[1:], key=lambda index: readings[index].outlier)[:LATER_READINGS]
-    later = sorted(likeliest)
+    later = _least_doubtful(own[1:], readings)
+    home = stations[station]
     mirrors = {
-        index: [
-            node for node in route.nodes if _may_be_echo_of(node, route, station, readings[own[0]], readings[index])
-        ]
+        index: [node for node in route.nodes if _may_be_echo_of(node, route, home, readings[own[0]], readings[index])]
         for index in later
     }
     for echo in (*later, None):
         others = [index for index in later if index != echo]
         options = [list(_other_causes(index, echo, mirrors[index], len(route.nodes) - 1, readings)) for index in others]
         event = () if echo is None else ((echo, Cause("echo")),)
-        seen = ECHO_UNSEEN if echo is None else (1 - ECHO_UNSEEN) * (1 - _outlier(readings[echo])) / len(later)
+        seen = ECHO_UNSEEN if echo is None else (1 - ECHO_UNSEEN) * _trust(readings[echo]) / len(later)
         for picked in itertools.product(*options):
             causes = tuple((index, cause) for index, cause, _ in picked if cause is not None)
             if _once_each(causes):
-                yield _Part((launch, *event, *causes), seen * math.prod(weight for _, _, weight in picked))
+                yield Part((launch, *event, *causes), seen * math.prod(weight for _, _, weight in picked))
+
+
+def _trust(reading: Reading) -> float:
+    return 1 - max(reading.outlier, SMALLEST_OUTLIER)
 
 
 def _may_be_echo_of(node: str, route: Route, station: Station, launch: Reading, reading: Reading) -> bool:
@@ -165,15 +228,15 @@ def _may_be_echo_of(node: str, route: Route, station: Station, launch: Reading, 
 def _other_causes(
     index: int, echo: int | None, mirrors: Sequence[str], n_mirrors: int, readings: Sequence[Reading]
 ) -> Iterator[tuple[int, Cause | None, float]]:
-    wrong = _outlier(readings[index])
+    wrong = max(readings[index].outlier, SMALLEST_OUTLIER)
     for mirror in mirrors:
-        yield index, Cause("node", mirror), (1 - wrong) * _PRIOR_OF_ECHO["node"] / n_mirrors
+        yield index, Cause("node", mirror), (1 - wrong) * PRIOR_OF_ECHO["node"] / n_mirrors
     if echo is not None and index > echo:
-        yield index, Cause("repeat"), (1 - wrong) * _PRIOR_OF_ECHO["repeat"]
+        yield index, Cause("repeat"), (1 - wrong) * PRIOR_OF_ECHO["repeat"]
     yield index, None, wrong
 
 
 def _once_each(causes: tuple[tuple[int, Cause], ...]) -> bool:
-    """A mirror gives one first echo, and the event one repeat."""
+    """A mirror gives one first echo, and the event one of each kind."""
     kinds = [cause for _, cause in causes]
     return len(set(kinds)) == len(kinds)

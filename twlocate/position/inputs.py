@@ -47,3 +47,11 @@ def columns(travel: TravelTime, station: int, n_stations: int) -> tuple[FloatArr
     at_zero = np.concatenate([travel.at_zero.ravel(), own, own])
     slope = np.concatenate([travel.slope.ravel(), np.zeros(2 * n_stations)])
     return at_zero, slope
+
+
+def input_variances(route: Route, stations: Sequence[Station]) -> FloatArray:
+    """Return the variance of every input, shape (P,)."""
+    of_sections = [q.u**2 for section in route.sections for q in (section.length, section.speed, section.flow)]
+    of_delays = [station.delay.u**2 for station in stations]
+    of_clocks = [0.0 if station.clock is None else station.clock.u**2 for station in stations]
+    return np.array([*of_sections, *of_delays, *of_clocks])

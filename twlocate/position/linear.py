@@ -22,8 +22,8 @@ import numpy as np
 
 from twlocate.arrays import FloatArray
 from twlocate.position.evidence import Reading, Station
-from twlocate.position.explanations import Explanation, path_of
-from twlocate.position.inputs import columns
+from twlocate.position.explanations import ECHOES, Cause, Explanation, path_of
+from twlocate.position.inputs import columns, input_variances
 from twlocate.routes import Route, travel_time
 
 
@@ -128,13 +128,16 @@ class LinearModel:
 
 def linear_model(
     route: Route, section: int, stations: Sequence[Station], readings: Sequence[Reading], explanation: Explanation
-) -> LinearModel:
-    """Set up the model of `explanation` for an event in `section`."""
+) -> LinearModel | None:
+    """Set up the model of `explanation` for an event in `section`; None where one of its causes has no path there."""
     rows = [readings[index] for index, _ in explanation.causes]
-    travels = [
-        travel_time(route, path_of(cause, route, section, stations[row.station].node))
+    paths = [
+        path_of(cause, route, section, stations[row.station].node)
         for row, (_, cause) in zip(rows, explanation.causes, strict=True)
     ]
+    travels = [travel_time(route, path) for path in paths if path is not None]
+    if len(travels) < len(paths):
+        return None
     partials = [columns(travel, row.station, len(stations)) for travel, row in zip(travels, rows, strict=True)]
     n_inputs = 3 * len(route.sections) + 2 * len(stations)
     return LinearModel(
@@ -144,22 +147,22 @@ def linear_model(
         at_zero=np.array([at_zero for at_zero, _ in partials]).reshape(-1, n_inputs),
         slope=np.array([slope for _, slope in partials]).reshape(-1, n_inputs),
         flat=_flat_columns(rows, stations, explanation),
-        variance=np.array([row.u_s**2 for row in rows]),
-        input_variance=_input_variances(route, stations),
+        variance=np.array(
+            [time_variance(row, cause) for row, (_, cause) in zip(rows, explanation.causes, strict=True)]
+        ),
+        input_variance=input_variances(route, stations),
         n_strays=len(readings) - len(rows),
     )
+
+
+def time_variance(reading: Reading, cause: Cause) -> float:
+    """Return the variance of a reading's time, s²; an echo is reshaped on its way and rides on other waves."""
+    return reading.u_s**2 + (reading.blur_s**2 if cause.kind in ECHOES else 0.0)
 
 
 def _known_lag(station: Station) -> float:
     clock = 0.0 if station.clock is None else station.clock.value
     return station.delay.value + clock
-
-
-def _input_variances(route: Route, stations: Sequence[Station]) -> FloatArray:
-    of_sections = [q.u**2 for section in route.sections for q in (section.length, section.speed, section.flow)]
-    of_delays = [station.delay.u**2 for station in stations]
-    of_clocks = [0.0 if station.clock is None else station.clock.u**2 for station in stations]
-    return np.array([*of_sections, *of_delays, *of_clocks])
 
 
 def _flat_columns(rows: Sequence[Reading], stations: Sequence[Station], explanation: Explanation) -> FloatArray:

@@ -1,14 +1,11 @@
 """Write a finding to a folder: all of it or nothing, and never over another."""
 
-import contextlib
 import re
-import shutil
-import tempfile
 from collections.abc import Iterator
 from pathlib import Path
 from typing import TYPE_CHECKING
 
-from twlocate.errors import CaseError
+from twlocate.folders import new_folder
 from twlocate.locating import Finding
 from twlocate.reporting.text import plain_text
 
@@ -26,30 +23,11 @@ def write_folder(finding: Finding, document: str, folder: Path) -> None:
     CaseError
         The folder exists, or cannot be written.
     """
-    if folder.exists():
-        raise CaseError(f"{folder}: exists already; name a new folder, so that no earlier finding is overwritten")
-    try:
-        with _becoming(folder) as unfinished:
-            (unfinished / "finding.json").write_text(document + "\n", encoding="utf-8")
-            (unfinished / "finding.txt").write_text(plain_text(finding), encoding="utf-8")
-            for name, figure in _figures(finding):
-                figure.savefig(unfinished / f"{name}.png", dpi=DPI)
-    except OSError as error:
-        raise CaseError(f"{folder}: cannot be written: {error.strerror or error}; name another folder") from error
-
-
-@contextlib.contextmanager
-def _becoming(folder: Path) -> Iterator[Path]:
-    """Yield a folder beside `folder` that takes its name at the end, or vanishes on any error."""
-    folder.parent.mkdir(parents=True, exist_ok=True)
-    unfinished = Path(tempfile.mkdtemp(prefix=f".{folder.name}-", dir=folder.parent))
-    try:
-        yield unfinished
-        unfinished.chmod(0o755)
-        unfinished.rename(folder)
-    except BaseException:
-        shutil.rmtree(unfinished, ignore_errors=True)
-        raise
+    with new_folder(folder) as unfinished:
+        (unfinished / "finding.json").write_text(document + "\n", encoding="utf-8")
+        (unfinished / "finding.txt").write_text(plain_text(finding), encoding="utf-8")
+        for name, figure in _figures(finding):
+            figure.savefig(unfinished / f"{name}.png", dpi=DPI)
 
 
 def _figures(finding: Finding) -> Iterator[tuple[str, "Figure"]]:

@@ -57,6 +57,24 @@ def repeated_echo_path(route: Route, section: int, node: str) -> WavePath:
     return WavePath("second echo of the event", echo_path(route, section, node).legs * 2)
 
 
+def again_path(route: Route, section: int, node: str) -> WavePath:
+    """Return the way of a wave that reaches `node`, is thrown back to the event, and returns."""
+    home = direct_path(route, section, node).legs
+    return WavePath("direct, and again by the event", (*home, *_reversed(home), *home))
+
+
+def mirror_path(route: Route, section: int, node: str, mirror: str) -> WavePath | None:
+    """Return the way of the wave from an event in `section` to the node `mirror` and from there to `node`.
+
+    None where `mirror` lies on the direct way: what it throws back does not reach `node`.
+    """
+    direct = direct_path(route, section, node)
+    away = direct_path(route, section, mirror)
+    if {leg.section for leg in away.legs} <= {leg.section for leg in direct.legs} and away.legs[0] == direct.legs[0]:
+        return None
+    return WavePath(f"by {mirror}", (*away.legs, *_whole(route.hops(mirror, node))))
+
+
 def node_echo_path(route: Route, node: str, mirror: str) -> WavePath:
     """Return the way of a pulse launched at `node`, to the node `mirror` and back."""
     back = _whole(route.hops(mirror, node))

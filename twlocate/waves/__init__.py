@@ -15,7 +15,27 @@ The two waves are d'Alembert's solution of the wave equation at the terminal; th
 variable and their difference over Z is the through variable.
 """
 
-from twlocate.waves.modal import AERIAL_MODES, CLARKE, aerial_mode, ground_mode
-from twlocate.waves.splitting import join, split
+from twlocate.waves.eigenmodes import Modes, eigenmodes
+from twlocate.waves.junctions import reflection, scattering
+from twlocate.waves.modal import AERIAL_MODES, CLARKE, KARRENBAUER, aerial_mode, ground_mode
+from twlocate.waves.splitting import join, split, split_dispersive
+from twlocate.waves.two_sensors import SpacingLimits, spacing_limits, split_two_sensors, split_two_traces
 
-__all__ = ["AERIAL_MODES", "CLARKE", "aerial_mode", "ground_mode", "join", "split"]
+__all__ = [
+    "AERIAL_MODES",
+    "CLARKE",
+    "KARRENBAUER",
+    "Modes",
+    "SpacingLimits",
+    "aerial_mode",
+    "eigenmodes",
+    "ground_mode",
+    "join",
+    "reflection",
+    "scattering",
+    "spacing_limits",
+    "split",
+    "split_dispersive",
+    "split_two_sensors",
+    "split_two_traces",
+]

@@ -19,6 +19,9 @@ CLARKE: FloatArray = np.array(
 )
 """Rows: ground (0), alpha, beta; columns: phases a, b, c (E. Clarke, Circuit Analysis of A-C Power Systems, 1943)."""
 
+KARRENBAUER: FloatArray = np.array([[1 / 3, 1 / 3, 1 / 3], [1 / 3, -1 / 3, 0.0], [1 / 3, 0.0, -1 / 3]])
+"""Rows: ground, a against b, a against c (H. Karrenbauer, dissertation, TU München, 1967, from memory)."""
+
 AERIAL_MODES: dict[str, tuple[float, float, float]] = {
     f"{mode} ({'abc'[turn]})": (float(row[0]), float(row[1]), float(row[2]))
     for turn in range(3)
