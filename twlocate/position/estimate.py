@@ -1,7 +1,7 @@
 """From readings to a place: the posterior over the whole route, its band, its alternatives and its budget."""
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -227,7 +227,24 @@ def _alternatives(
             point = _peak(own, models[index])
             words = _attribution(route, stations, readings, explanation, point.section)
             found.append((index, Alternative(point, highest_density(own, coverage), probability, words)))
-    return sorted(found, key=lambda item: -item[1].probability)
+    return _by_place(sorted(found, key=lambda item: -item[1].probability))
+
+
+def _by_place(found: Sequence[tuple[int, Alternative]]) -> list[tuple[int, Alternative]]:
+    """Leave one alternative for each place, that of its best explanation; the others add to its probability."""
+    kept: list[tuple[int, Alternative]] = []
+    for index, row in found:
+        twin = next((n for n, (_, other) in enumerate(kept) if _inside(row.point, other.band)), None)
+        if twin is None:
+            kept.append((index, row))
+        else:
+            first, better = kept[twin]
+            kept[twin] = (first, replace(better, probability=better.probability + row.probability))
+    return sorted(kept, key=lambda item: -item[1].probability)
+
+
+def _inside(point: Point, band: Sequence[Piece]) -> bool:
+    return any(p.section == point.section and p.from_m <= point.distance_m <= p.to_m for p in band)
 
 
 def _peak(densities: Sequence[SectionDensity], models: Sequence[LinearModel | None]) -> Point:
