@@ -24,6 +24,7 @@ from twlocate.arrays import FloatArray
 from twlocate.position.evidence import Reading, Station
 from twlocate.position.explanations import ECHOES, Cause, Explanation, path_of
 from twlocate.position.inputs import columns, input_variances
+from twlocate.quantity import Quantity
 from twlocate.routes import Route, travel_time
 
 
@@ -111,6 +112,18 @@ class LinearModel:
         here = np.array([x])
         pull = np.linalg.solve(self.covariance(here)[0], self.residual(here)[0])
         return np.asarray(self.variance * (self.differences.T @ pull), dtype=np.float64)
+
+    def difference_left(self, row: int, other: int, x: float, u_x: float) -> Quantity:
+        """Return by how much one reading is later than their paths explain from another, for an event at x ± `u_x`, s."""
+        times = self.times - self.constant - x * self.per_metre
+        jacobian = self.jacobian(np.array([x]))[0]
+        variance = (
+            self.variance[row]
+            + self.variance[other]
+            + float((jacobian[row] - jacobian[other]) ** 2 @ self.input_variance)
+            + ((self.per_metre[row] - self.per_metre[other]) * u_x) ** 2
+        )
+        return Quantity(float(times[row] - times[other]), float(np.sqrt(variance)))
 
     def best_x(self, length_m: float) -> tuple[float, float]:
         """Return the x of least misfit on [0, `length_m`] and its standard uncertainty, m.
