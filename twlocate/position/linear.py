@@ -114,7 +114,7 @@ class LinearModel:
         return np.asarray(self.variance * (self.differences.T @ pull), dtype=np.float64)
 
     def difference_left(self, row: int, other: int, x: float, u_x: float) -> Quantity:
-        """Return by how much one reading is later than their paths explain from another, for an event at x ± `u_x`, s."""
+        """Return how much later than another, beyond what the paths explain, a reading is at x ± `u_x`, s."""
         times = self.times - self.constant - x * self.per_metre
         jacobian = self.jacobian(np.array([x]))[0]
         variance = (
