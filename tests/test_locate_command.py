@@ -1,6 +1,7 @@
 """``twlocate locate`` as a user meets it: answers, exit status, one-line errors, nothing half written."""
 
 import json
+import re
 import shutil
 from dataclasses import replace
 from pathlib import Path
@@ -215,13 +216,39 @@ def test_a_clipped_front(event):
     in_one_line(run(case), 3, "Pump house: no channel is clipped at the front: p at the end of its range")
 
 
+def shift_clock(case, ahead_ns):
+    record = read(case.parent / "marsh-end.cfg")
+    write_comtrade(replace(record, start_ns=record.start_ns + ahead_ns), record.path, "BINARY32")
+
+
+def keep_first_fronts(case):
+    """Cut the recordings off right behind the first fronts, before any echo."""
+    for stem, rows in (("hollin-fell", 9_860), ("marsh-end", 10_150)):
+        data = case.parent / f"{stem}.dat"
+        data.write_bytes(data.read_bytes()[: rows * 32])
+
+
 def test_clocks_that_cannot_both_be_right(event):
     case = event("line-fault")
-    record = read(case.parent / "marsh-end.cfg")
-    write_comtrade(replace(record, start_ns=record.start_ns + 1_000_000), case.parent / "marsh-end.cfg", "BINARY32")
+    shift_clock(case, 1_000_000)
+    keep_first_fronts(case)
     result = run(case)
-    in_one_line(result, 3, "arrival difference within the transit time")
+    in_one_line(result, 3, "the first front reaches Marsh End 1.24901 ms after Hollin Fell; a wave needs 0.40197 ms")
     assert "Look at" not in result.stdout
+
+
+@pytest.mark.parametrize("ahead_us", [20.0, 1000.0, 1e6])
+def test_echoes_name_the_wrong_clock_and_by_how_much(event, ahead_us):
+    case = event("line-fault")
+    shift_clock(case, round(ahead_us * 1000))
+    edit(case, 'clock = "± 0.1 µs"', 'clock = "± 0.1 µs"\nbus = "low impedance"')
+    document = located(case)
+    assert held(document)
+    words = [row["attribution"] for row in document["alternatives"] if row["probability"] > 0.3]
+    of_marsh_end = next(word for word in words if "clock of Marsh End taken as wrong" in word)
+    number, unit = re.search(r"wrong: ([\d.]+) (\S+) ahead", of_marsh_end).groups()
+    found = float(number) * {"µs": 1.0, "ms": 1e3, "s": 1e6}[unit]
+    assert found == pytest.approx(ahead_us, abs=1.0)
 
 
 def held(document):
@@ -250,9 +277,7 @@ def test_a_free_clock_without_echoes(event):
     """With the recording ending right behind the first front nothing but the clocks could tell."""
     case = event("line-fault")
     edit(case, 'clock = "± 0.1 µs"', 'clock = "free"')
-    for stem, rows in (("hollin-fell", 9_860), ("marsh-end", 10_150)):
-        data = case.parent / f"{stem}.dat"
-        data.write_bytes(data.read_bytes()[: rows * 32])
+    keep_first_fronts(case)
     in_one_line(run(case), 3, "the clock of Hollin Fell, Marsh End is free")
 
 

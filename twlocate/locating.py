@@ -30,6 +30,8 @@ ECHO_BLUR = 0.1
 FAINT_ECHO = 0.05
 """An echo of this share of the launched pulse is as likely the event's as not (common practice, no source)."""
 
+TRANSIT_CHECK = "arrival difference within the transit time"
+
 NS = 1e-9
 
 
@@ -216,7 +218,7 @@ def _transit_check(case: Case, stations: Sequence[Station], one: Reading, other:
     )
     passed = bool(difference <= transit.value + TRANSIT_SIGMAS * u)
     way_out = "" if passed else "; a clock is off, or a first front is missing: check the clocks, or set one to 'free'"
-    return Gate(f"{start} and {end}: arrival difference within the transit time", passed, detail + way_out, fatal=True)
+    return Gate(f"{start} and {end}: {TRANSIT_CHECK}", passed, detail + way_out)
 
 
 def _true_time(stations: Sequence[Station], reading: Reading) -> Quantity:
@@ -236,10 +238,11 @@ def _estimate(
     fatal = [f"{gate.name}: {gate.detail}" for gate in checks if gate.fatal and not gate.passed]
     if fatal:
         return None, "; ".join(fatal)
+    contradictions = [gate.detail for gate in checks if TRANSIT_CHECK in gate.name and not gate.passed]
     try:
         return estimate(case.route, stations, readings, coverage=coverage, again=EVENT_REFLECTS[case.kind]), ""
     except NoPosition as error:
-        return None, str(error)
+        return None, "; ".join(contradictions) or str(error)
 
 
 def _places(case: Case, found: Estimate) -> tuple[PlaceShare, ...]:

@@ -2,6 +2,7 @@
 
 import json
 import re
+from pathlib import Path
 
 import numpy as np
 import pytest
@@ -285,3 +286,16 @@ def test_closed_end_has_no_flow(tmp_path):
     pressure, flow = (channel.samples for channel in read(folder / "works.csv").channels)
     assert np.abs(flow).max() < 1e-3 * 0.02
     assert pressure[-1] < pressure[0]
+
+
+@pytest.mark.parametrize("name", ["line-fault", "main-burst"])
+def test_the_scenarios_beside_the_recordings_are_found_again(tmp_path, name):
+    scenario = Path(__file__).parents[2] / "recordings" / "scenarios" / f"{name}.toml"
+    folder = tmp_path / "event"
+    assert CliRunner().invoke(main, ["simulate", str(scenario), "--out", str(folder)]).exit_code == 0
+    found = json.loads(CliRunner().invoke(main, ["locate", str(folder / "case.toml"), "--json"]).stdout)
+    truth = json.loads((folder / "truth.json").read_text(encoding="utf-8"))
+    assert found["status"] == "located"
+    assert any(
+        p["section"] == truth["section"] and p["from_m"] <= truth["distance_m"] <= p["to_m"] for p in found["band"]
+    )

@@ -1,7 +1,7 @@
 """From readings to a place: the posterior over the whole route, its band, its alternatives and its budget."""
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -15,6 +15,7 @@ from twlocate.position.inputs import list_inputs
 from twlocate.position.linear import LinearModel, linear_model
 from twlocate.position.shortlist import explain
 from twlocate.routes import Route
+from twlocate.scales import time_scale, time_text
 
 COARSE_POINTS = 129
 """Grid points a section before it is refined."""
@@ -226,8 +227,26 @@ def _alternatives(
         if _informative(models[index]) and probability > (1 - coverage) / 50:
             point = _peak(own, models[index])
             words = _attribution(route, stations, readings, explanation, point.section)
+            words += _clock_words(stations, readings, explanation, _possible(models[index][point.section]), point)
             found.append((index, Alternative(point, highest_density(own, coverage), probability, words)))
-    return sorted(found, key=lambda item: -item[1].probability)
+    return _by_place(sorted(found, key=lambda item: -item[1].probability))
+
+
+def _by_place(found: Sequence[tuple[int, Alternative]]) -> list[tuple[int, Alternative]]:
+    """Leave one alternative for each place, that of its best explanation; the others add to its probability."""
+    kept: list[tuple[int, Alternative]] = []
+    for index, row in found:
+        twin = next((n for n, (_, other) in enumerate(kept) if _inside(row.point, other.band)), None)
+        if twin is None:
+            kept.append((index, row))
+        else:
+            first, better = kept[twin]
+            kept[twin] = (first, replace(better, probability=better.probability + row.probability))
+    return sorted(kept, key=lambda item: -item[1].probability)
+
+
+def _inside(point: Point, band: Sequence[Piece]) -> bool:
+    return any(p.section == point.section and p.from_m <= point.distance_m <= p.to_m for p in band)
 
 
 def _peak(densities: Sequence[SectionDensity], models: Sequence[LinearModel | None]) -> Point:
@@ -254,8 +273,27 @@ def _attribution(
 ) -> str:
     words = [_path_name(route, stations, readings[index], cause, section) for index, cause in explanation.causes]
     counted = [f"{words.count(word)} × {word}" if words.count(word) > 1 else word for word in dict.fromkeys(words)]
-    wrong = [f"clock of {stations[s].node} taken as wrong" for s in sorted(explanation.wrong_clocks)]
-    return ", ".join(counted + wrong)
+    return ", ".join(counted)
+
+
+def _clock_words(
+    stations: Sequence[Station],
+    readings: Sequence[Reading],
+    explanation: Explanation,
+    model: LinearModel,
+    point: Point,
+) -> str:
+    """Say by how much the clocks that an explanation takes as wrong must be off."""
+    words = ""
+    owners = [readings[index].station for index, _ in explanation.causes]
+    for station in sorted(explanation.wrong_clocks & set(owners)):
+        trusted = [row for row, owner in enumerate(owners) if owner not in explanation.wrong_clocks]
+        if trusted:
+            off = model.difference_left(owners.index(station), trusted[0], point.distance_m, point.u_m)
+            ahead = "ahead" if off.value > 0 else "behind"
+            size = f"{time_scale(abs(off.value), off.u)(abs(off.value))} {ahead}, u {time_text(off.u)}"
+            words += f"; clock of {stations[station].node} taken as wrong: {size}"
+    return words
 
 
 def _path_name(route: Route, stations: Sequence[Station], reading: Reading, cause: Cause, section: int) -> str:

@@ -24,6 +24,7 @@ from twlocate.arrays import FloatArray
 from twlocate.position.evidence import Reading, Station
 from twlocate.position.explanations import ECHOES, Cause, Explanation, path_of
 from twlocate.position.inputs import columns, input_variances
+from twlocate.quantity import Quantity
 from twlocate.routes import Route, travel_time
 
 
@@ -104,12 +105,25 @@ class LinearModel:
         return np.asarray(proper - 0.5 * (np.linalg.slogdet(covariance)[1] + misfit), dtype=np.float64)
 
     def left_over(self, x: float) -> FloatArray:
-        """Return what the best values of the flat unknowns leave of each reading at x, shape (n,), s."""
-        weighted = self.jacobian(np.array([x]))[0] * np.sqrt(self.input_variance)
-        covariance = weighted @ weighted.T + np.diag(self.variance)
+        """Return the most probable error of each reading's time for an event at x, shape (n,), s.
+
+        What the readings do not fit by is shared out between them and the inputs in proportion to their variances.
+        """
         here = np.array([x])
         pull = np.linalg.solve(self.covariance(here)[0], self.residual(here)[0])
-        return np.asarray(covariance @ self.differences.T @ pull, dtype=np.float64)
+        return np.asarray(self.variance * (self.differences.T @ pull), dtype=np.float64)
+
+    def difference_left(self, row: int, other: int, x: float, u_x: float) -> Quantity:
+        """Return how much later than another, beyond what the paths explain, a reading is at x ± `u_x`, s."""
+        times = self.times - self.constant - x * self.per_metre
+        jacobian = self.jacobian(np.array([x]))[0]
+        variance = (
+            self.variance[row]
+            + self.variance[other]
+            + float((jacobian[row] - jacobian[other]) ** 2 @ self.input_variance)
+            + ((self.per_metre[row] - self.per_metre[other]) * u_x) ** 2
+        )
+        return Quantity(float(times[row] - times[other]), float(np.sqrt(variance)))
 
     def best_x(self, length_m: float) -> tuple[float, float]:
         """Return the x of least misfit on [0, `length_m`] and its standard uncertainty, m.
