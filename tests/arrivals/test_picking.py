@@ -169,3 +169,15 @@ def test_hum_that_steepens_before_the_event_is_no_front():
     first = pick(trace).arrivals[0]
     assert first.time_s * rate == pytest.approx(onset, abs=1.0)
     assert first.polarity == -1
+
+
+@pytest.mark.parametrize(("rise", "snr_db"), [(1e-3, 10.0), (30.0, 20.0)])
+def test_weak_fronts_in_short_records_are_found(rise, snr_db):
+    """Twenty records of 2048 samples; at least nineteen fronts within five samples or their rise of the truth."""
+    rng = np.random.default_rng(12)
+    found = 0
+    for _ in range(20):
+        onset = 1190 + rng.uniform()
+        picks = pick(Trace(step(2048, onset, rise) + noise(rng, 2048, 10 ** (-snr_db / 20)), 1.0))
+        found += bool(picks.arrivals) and abs(picks.arrivals[0].time_s - onset) < max(5.0, rise)
+    assert found >= 19

@@ -8,8 +8,9 @@ import numpy as np
 from twlocate.arrays import FloatArray
 from twlocate.arrivals.modulus import Modulus, dyadic_scales, haar_coefficients, modulus, without_trend
 
-FIRST_LOOK = 0.1
-"""The noise is first measured on this share of the record, then on everything before the first front."""
+LOOKS = (0.1, 0.6)
+"""The noise is first measured on this share of the record, then on everything before the first front; where nothing
+is found, on the next share, for a weak front in a short record: fronts are rare enough not to disturb the measure."""
 
 FEWEST_QUIET = 48
 """Samples; on fewer the noise cannot be measured."""
@@ -62,8 +63,18 @@ class FirstFront:
 
 
 def first_front(samples: FloatArray, step: float, false_alarm: float) -> FirstFront:
-    """Find the first front: on the noise in the first tenth of the record, then on all that precedes it."""
-    quiet = max(int(FIRST_LOOK * samples.size), FEWEST_QUIET)
+    """Find the first front; each look has its share of the probability of a false alarm."""
+    found = FirstFront(None, samples.size, 2)
+    for share in LOOKS:
+        quiet = max(int(share * samples.size), FEWEST_QUIET)
+        found = _look(samples, step, false_alarm / len(LOOKS), quiet)
+        if found.front is not None:
+            break
+    return found
+
+
+def _look(samples: FloatArray, step: float, false_alarm: float, quiet: int) -> FirstFront:
+    """Look for a front against the noise in the first `quiet` samples, then against all that precedes it."""
     front: Candidate | None = None
     scale = 2
     for _ in range(2):
