@@ -158,3 +158,21 @@ def test_recordings_without_starts_and_with_stated_clocks_are_told_to_be_taken_a
     assert position(main) == pytest.approx(before, abs=1e-6)
     gates = [gate for gate in locate(load_case(main)).checks if gate.name.endswith(": clock")]
     assert all("taken as started together" in gate.detail for gate in gates)
+
+
+# ---------------------------------------------------------------- a pulse whose echo is hidden
+
+
+def test_edges_of_the_far_ends_echo_are_not_taken_for_the_event(tmp_path):
+    """Noise of 0.8 V hides the fault's echo but not the open end's, whose two edges then looked like two echoes."""
+    case = shutil.copytree(RECORDINGS / "cable-echo", tmp_path / "cable") / "case.toml"
+    path = case.parent / "pulse-echo.csv"
+    head, rows = path.read_text(encoding="utf-8").split("[V]\n")
+    volts = np.array(rows.split(), dtype=float)
+    for seed in (0, 10, 14, 17, 18, 19):  # six draws that were placed at the far end, 437 m off, with a u of 3 to 4 m
+        noise = np.random.default_rng(seed).normal(0, 0.8, volts.size)
+        text = "\n".join(f"{value:.7g}" for value in volts + noise)
+        path.write_text(head + "[V]\n" + text + "\n", encoding="utf-8")
+        finding = locate(load_case(case))
+        assert finding.estimate is None
+        assert "no echo of the event" in finding.reason or "would cover more" in finding.reason

@@ -292,8 +292,13 @@ def without_trailing_edges(picks: Picks) -> Picks:
 
 
 def _is_pulse(start: Arrival, end: Arrival, width_s: float) -> bool:
-    """Whether two fronts are the edges of a pulse of the launched width."""
-    return start.polarity != end.polarity and abs(end.time_s - start.time_s - width_s) < width_s / 2
+    """Whether two fronts belong to one pulse of the launched width.
+
+    Its other edge has the other sign and comes late where the pulse was smeared; within the width itself noise makes
+    fronts of either sign, and no second echo could be told apart.
+    """
+    apart_s = abs(end.time_s - start.time_s)
+    return apart_s < width_s or (start.polarity != end.polarity and apart_s < 1.5 * width_s)
 
 
 def _pulse_width_s(picks: Picks) -> float:

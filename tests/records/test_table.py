@@ -235,3 +235,15 @@ def test_dates_of_spreadsheets_in_two_columns(tmp_path):
     record = read(table(tmp_path, text))
     assert record.start_ns == np.datetime64("2025-12-31T23:59:59.5", "ns").astype(np.int64)
     assert record.stretches[0].rate_hz == pytest.approx(2.0)
+
+
+def test_blank_lines_among_rows_without_times_are_refused(tmp_path):
+    rows = [f"{value}" for value in range(100)]
+    path = tmp_path / "gappy.csv"
+    path.write_text("\n".join(["# rate: 250 Hz", "p [kPa]", *rows[:40], "", "", *rows[40:], "", ""]), encoding="utf-8")
+    with pytest.raises(RecordError, match="2 blank lines among the rows and no time column"):
+        read(path)
+    path.write_text("\n\n".join(["# rate: 250 Hz", "p [kPa]", *rows]), encoding="utf-8")  # double-spaced throughout
+    assert read(path).channels[0].samples.tolist() == list(map(float, range(100)))
+    path.write_text("\n".join(["# rate: 250 Hz", "p [kPa]", *rows, "", ""]), encoding="utf-8")
+    assert read(path).n_samples == 100

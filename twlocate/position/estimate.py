@@ -293,6 +293,8 @@ def _clock_words(
             ahead = "ahead" if off.value > 0 else "behind"
             size = f"{time_scale(abs(off.value), off.u)(abs(off.value))} {ahead}, u {time_text(off.u)}"
             words += f"; clock of {stations[station].node} taken as wrong: {size}"
+            if sum(other.clock is not None for other in stations) == 2:
+                words += f", or that of {stations[owners[trusted[0]]].node} as much the other way"
     return words
 
 

@@ -124,11 +124,15 @@ def parts_of(
 
 
 def clock_states(stations: Sequence[Station]) -> tuple[tuple[frozenset[int], float], ...]:
-    """Return (wrong clocks, prior): all clocks right, or one of the stated ones wrong; a launch needs none."""
-    stated = [s for s, station in enumerate(stations) if station.clock is not None and not station.launches]
-    wrongable = stated if len(stated) > 1 else []
-    right = (frozenset[int](), 1.0 - CLOCK_WRONG * len(wrongable))
-    return (right, *((frozenset({station}), CLOCK_WRONG) for station in wrongable))
+    """Return (wrong clocks, prior): all clocks right, or one of the stated ones wrong.
+
+    Of two clocks none can tell which is wrong, only that they differ: the second stands for both.
+    """
+    stated = [s for s, station in enumerate(stations) if station.clock is not None]
+    wrong = {1: [], 2: stated[1:]}.get(len(stated), stated)
+    share = CLOCK_WRONG * len(stated) / max(len(wrong), 1)
+    right = (frozenset[int](), 1.0 - share * len(wrong))
+    return (right, *((frozenset({station}), share) for station in wrong))
 
 
 def _least_doubtful(indices: Sequence[int], readings: Sequence[Reading]) -> list[int]:

@@ -59,14 +59,34 @@ def read_table(path: Path, span: Span | None) -> Record:
         There are no numbers, or nothing gives them a time.
     """
     log = RepairLog()
-    layout = lay_out(decode(path.read_bytes(), "the text", log))
+    text = decode(path.read_bytes(), "the text", log)
+    layout = lay_out(text)
     time_columns = _time_columns(layout)
+    if not time_columns:
+        _check_blank_lines(text, len(layout.rows))
     times = None
     if time_columns:
         layout, texts = _timed_rows(layout, time_columns, log)
         times = parse_times(texts, layout.units[time_columns[0]], log)
     channels = _channels(layout, _numbers(layout, time_columns, log), time_columns)
     return cut(assemble(path, "text table", channels, times, layout.settings, log), span)
+
+
+def _check_blank_lines(text: str, n_rows: int) -> None:
+    """Refuse a table without times that has blank lines among its rows, unless every row is followed by one.
+
+    Raises
+    ------
+    RecordError
+        It would be a guess whether a blank line stands for a sample that is missing.
+    """
+    lines = text.replace("\0", "").strip().splitlines()[-n_rows:]
+    blank = sum(not line.strip() for line in lines)
+    if 0 < blank < n_rows // 2 - 1:
+        raise RecordError(
+            f"{blank} blank lines among the rows and no time column: it is open whether samples are missing there; "
+            "add a time column, or delete the blank lines"
+        )
 
 
 def lay_out(text: str) -> Layout:
