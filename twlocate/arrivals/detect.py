@@ -21,6 +21,9 @@ WINDOWS_A_SCALE = 16
 GROWTH = 1.15
 """A front is no longer than the scale from which doubling the scale raises the modulus by less than this."""
 
+LEAST_TELLING = 0.2
+"""A first front below this share of the strongest tells nothing of how the later ones rise."""
+
 MOST_WEIGHED = 100
 """No more later fronts than this are looked at; what follows is ringing."""
 
@@ -59,7 +62,8 @@ class FirstFront:
     quiet: int
     """Samples before the first front."""
     scale: int
-    """About the rise time of the strongest front, samples: the one by which later fronts are told apart."""
+    """About the rise time by which later fronts are told apart, samples: that of the first, if it is high enough to be
+    like them, or else of the strongest."""
 
 
 def first_front(samples: FloatArray, step: float, false_alarm: float) -> FirstFront:
@@ -84,7 +88,8 @@ def _look(samples: FloatArray, step: float, false_alarm: float, quiet: int) -> F
         front = _earliest(samples, field, limit)
         if front is None:
             return FirstFront(None, samples.size, scale)
-        scale = _grown(samples, field, limit, 0, int(field.largest.argmax())).scale
+        strongest = _grown(samples, field, limit, 0, int(field.largest.argmax()))
+        scale = front.scale if front.height > LEAST_TELLING * strongest.height else strongest.scale
         quiet = max(front.sample - 2 * front.scale, 0)
         if quiet < FEWEST_QUIET:
             break
